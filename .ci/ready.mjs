@@ -14,13 +14,20 @@ function step(what, command, args) {
   const done = spawnSync(command, args, { cwd: top, encoding: 'utf8', shell: process.platform === 'win32' })
   if (done.status === 0) return
   process.stderr.write(`${done.stdout ?? ''}${done.stderr ?? ''}\n`)
-  process.stderr.write(`${what}: \`${[command, ...args].join(' ')}\` failed${done.error ? ` (${done.error.message})` : ''}.\n`)
+  process.stderr.write(
+    `${what}: \`${[command, ...args].join(' ')}\` failed${done.error ? ` (${done.error.message})` : ''}.\n`,
+  )
   process.exit(70)
 }
 
 const fingerprint = (files) => {
   const hash = createHash('sha256')
-  for (const file of files) hash.update(file).update('\0').update(readFileSync(join(top, file))).update('\0')
+  for (const file of files)
+    hash
+      .update(file)
+      .update('\0')
+      .update(readFileSync(join(top, file)))
+      .update('\0')
   return hash.digest('hex')
 }
 const sources = (folder) =>

@@ -5,7 +5,10 @@ import type { JobOptions, Progress } from './options.js'
  * The time limit of a job. Long stages that run in one piece call `onProgress` now and then: there the clock is looked
  * at, so that the limit also holds where no timer can fire.
  */
-export function withDeadline(options: JobOptions): { readonly onProgress: (progress: Progress) => void; readonly signal: AbortSignal } {
+export function withDeadline(options: JobOptions): {
+  readonly onProgress: (progress: Progress) => void
+  readonly signal: AbortSignal
+} {
   const { timeLimitSeconds } = options
   const end = timeLimitSeconds === undefined ? Number.POSITIVE_INFINITY : performance.now() + timeLimitSeconds * 1000
   const controller = new AbortController()
@@ -24,7 +27,10 @@ export function withDeadline(options: JobOptions): { readonly onProgress: (progr
 
 function timeIsUp(seconds: number, reached: Progress | undefined): StillmarkError {
   const { stage, done, unit } = reached ?? {}
-  const at = stage === undefined ? '' : ` while ${stage}${done === undefined ? '' : ` (${done.toLocaleString('en-US')} ${unit ?? ''} done)`}`
+  const at =
+    stage === undefined
+      ? ''
+      : ` while ${stage}${done === undefined ? '' : ` (${done.toLocaleString('en-US')} ${unit ?? ''} done)`}`
   return new StillmarkError(
     {
       code: 'time-limit',

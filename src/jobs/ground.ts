@@ -43,11 +43,7 @@ export async function layGround(
  * `statesBeforeUnbounded` states. A model whose variables all have bounds is finite, so reaching the cap there is
  * the user's limit and ends the job.
  */
-function enumerate(
-  model: Model,
-  options: JobOptions,
-  onProgress: (progress: Progress) => void,
-): Chain | undefined {
+function enumerate(model: Model, options: JobOptions, onProgress: (progress: Progress) => void): Chain | undefined {
   const bounded = model.kind === 'table' || (model.lower.every(Number.isFinite) && model.upper.every(Number.isFinite))
   const cap = options.maxStates ?? runDefaults.maxStates
   const maxStates = bounded ? cap : Math.min(cap, runDefaults.statesBeforeUnbounded)

@@ -1,4 +1,4 @@
-import { type Chain, type Structure } from '../chain/chain.js'
+import type { Chain, Structure } from '../chain/chain.js'
 import { shownState } from '../chain/shown-state.js'
 import type { StructurePart } from './document.js'
 

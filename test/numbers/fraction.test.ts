@@ -1,6 +1,16 @@
 import fc from 'fast-check'
 import { describe, expect, test } from 'vitest'
-import { add, divide, floor, fraction, fractionOfDouble, fractionOfText, multiply, toNumber, toText } from '../../src/numbers/fraction.js'
+import {
+  add,
+  divide,
+  floor,
+  fraction,
+  fractionOfDouble,
+  fractionOfText,
+  multiply,
+  toNumber,
+  toText,
+} from '../../src/numbers/fraction.js'
 
 const anyFraction = fc
   .tuple(fc.bigInt({ min: -(10n ** 30n), max: 10n ** 30n }), fc.bigInt({ min: 1n, max: 10n ** 30n }))
@@ -23,10 +33,14 @@ describe('toNumber', () => {
       }),
       { seed: 7, numRuns: 5000 },
     ))
-  test.each(['5e-324', '2.4703282292062327e-324', '2.4703282292062328e-324', '1.7976931348623157e308', '1e309', '2.2250738585072011e-308'])(
-    '%s at the edge of the range',
-    (text) => expect(toNumber(fractionOfText(text)!)).toBe(Number(text)),
-  )
+  test.each([
+    '5e-324',
+    '2.4703282292062327e-324',
+    '2.4703282292062328e-324',
+    '1.7976931348623157e308',
+    '1e309',
+    '2.2250738585072011e-308',
+  ])('%s at the edge of the range', (text) => expect(toNumber(fractionOfText(text)!)).toBe(Number(text)))
 })
 
 describe('fractionOfText', () => {
@@ -41,8 +55,9 @@ describe('fractionOfText', () => {
     ['5.', '5'],
     ['0/7', '0'],
   ])('%j is %s', (text, value) => expect(toText(fractionOfText(text)!)).toBe(value))
-  test.each(['', '.', 'x', '1/0', '1/2/3', '1e401', '0x10', 'Infinity', 'NaN', '1 2', '--1'])('%j is no number', (text) =>
-    expect(fractionOfText(text)).toBeUndefined(),
+  test.each(['', '.', 'x', '1/0', '1/2/3', '1e401', '0x10', 'Infinity', 'NaN', '1 2', '--1'])(
+    '%j is no number',
+    (text) => expect(fractionOfText(text)).toBeUndefined(),
   )
 })
 
