@@ -1,6 +1,6 @@
 import { addPiece, type BatchSums, closeBatch, newBatchSums } from './batch-sums.js'
-import { layerEnd, outsideTheCore } from './exponential.js'
-import { stateOf, streamFrom } from './random-stream.js'
+import { layerDensity, layerEnd, tailStart } from './exponential.js'
+import { stateOf } from './random-stream.js'
 import { beginOf, borderOf, firstStretch, lengthOf } from './run-clock.js'
 import type { EnumeratedTask } from './task.js'
 
@@ -99,12 +99,17 @@ const newTally = ({ rowStart, target }: EnumeratedTask): Tally => ({
 /** @returns whether the stretch ended; else `budget` events were made */
 function walkInContinuousTime(task: EnumeratedTask, walk: Walk, tally: Tally, budget: number): boolean {
   const { rowStart, target, cutoff, alias, meanHolding } = task
-  const { timeIn, fired, states, arcs, random } = { ...tally, random: walk.random }
+  const { timeIn, fired, states, arcs } = tally
+  const { random } = walk
   const ends = layerEnd
+  const densities = layerDensity
   const { left } = walk
   let { state, holding } = walk
   let { stateCount, arcCount } = tally
-  let [s0, s1, s2, s3] = random
+  let s0 = random[0]
+  let s1 = random[1]
+  let s2 = random[2]
+  let s3 = random[3]
   // Time is measured from the start of this piece: short holding times keep their digits in a long stretch.
   let elapsed = 0
   let made = 0
@@ -135,10 +140,30 @@ function walkInContinuousTime(task: EnumeratedTask, walk: Walk, tally: Tally, bu
       if (x < ends[layer + 1]) {
         holding = x * meanHolding[state]
       } else {
-        const stream = streamFrom([s0, s1, s2, s3])
-        const settled = outsideTheCore(stream, layer, x)
-        ;[s0, s1, s2, s3] = Int32Array.from(stream.state())
-        if (settled > 0) holding = settled * meanHolding[state]
+        // As in `outsideTheCore`: written out here, since a call would cost the loop its registers.
+        sum = (s0 + s3) | 0
+        const nextHigh = (((sum << 7) | (sum >>> 25)) + s0) | 0
+        shifted = s1 << 9
+        s2 ^= s0
+        s3 ^= s1
+        s1 ^= s2
+        s0 ^= s3
+        s2 ^= shifted
+        s3 = (s3 << 11) | (s3 >>> 21)
+        sum = (s0 + s3) | 0
+        const nextLow = (((sum << 7) | (sum >>> 25)) + s0) | 0
+        shifted = s1 << 9
+        s2 ^= s0
+        s3 ^= s1
+        s1 ^= s2
+        s0 ^= s3
+        s2 ^= shifted
+        s3 = (s3 << 11) | (s3 >>> 21)
+        const u = ((nextHigh >>> 5) * 67108864 + (nextLow >>> 6) + 1) * 1.1102230246251565e-16
+        if (layer === 0) holding = (tailStart - Math.log(u)) * meanHolding[state]
+        else if (densities[layer] + u * (densities[layer + 1] - densities[layer]) < Math.exp(-x)) {
+          holding = x * meanHolding[state]
+        }
       }
     }
     if (timeIn[state] === 0) states[stateCount++] = state
@@ -205,10 +230,14 @@ function walkInSteps(
   border: { readonly whole: number; readonly part: number },
 ): boolean {
   const { rowStart, target, cutoff, alias } = task
-  const { timeIn, fired, states, arcs, random } = { ...tally, random: walk.random }
+  const { timeIn, fired, states, arcs } = tally
+  const { random } = walk
   let { state, used } = walk
   let { stateCount, arcCount } = tally
-  let [s0, s1, s2, s3] = random
+  let s0 = random[0]
+  let s1 = random[1]
+  let s2 = random[2]
+  let s3 = random[3]
   const steps = Math.min(budget, border.whole - walk.step)
   let made = 0
   while (made < steps) {

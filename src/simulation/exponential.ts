@@ -7,7 +7,7 @@ import type { RandomStream } from './random-stream.js'
  */
 const layers = 256
 /** Where the tail begins, and the area of a layer: Marsaglia and Tsang 2000, from memory; the test adds the areas up. */
-const tailStart = 7.69711747013105
+export const tailStart = 7.69711747013105
 const layerArea = 0.003949659822581557
 
 /** Right ends of the layers, length 257; entry 0 is the width of the lowest one with its tail spread out, the last is 0. */
