@@ -1,5 +1,10 @@
+import type { SimdProducts } from './simd-products.js'
+
 /** Pivots that are eliminated before the rest of the matrix is brought up to date, so that it is read once for all of them. */
 const panelWidth = 32
+
+/** With fewer rows the calls cost more than they save. */
+const smallestForSimd = 16
 
 /**
  * Eliminates the leading states of a dense matrix of rates, without subtraction, in place.
@@ -16,6 +21,7 @@ const panelWidth = 32
  * @param leaving length at least pivots: s_k is put here
  * @param least a state whose s_k is below this stays (it is moved behind the others): its shares would lose digits to
  *   underflow
+ * @param simd kernel for the bulk of the products, used where `a` lies in its memory; changes no digit
  * @returns number of states eliminated
  */
 export function eliminateLeading(
@@ -25,6 +31,7 @@ export function eliminateLeading(
   indices: Int32Array,
   leaving: Float64Array,
   least: number,
+  simd?: SimdProducts,
 ): number {
   let candidates = Math.min(pivots, size)
   let done = 0
@@ -48,10 +55,10 @@ export function eliminateLeading(
     }
     if (stuck) {
       // Row `stop` has had the panel's updates already; the exchange below happens after all others have, too.
-      updateBelow(a, size, done, stop, stop + 1, leaving)
+      updateBelow(a, size, done, stop, stop + 1, leaving, simd)
       candidates--
       exchange(a, size, stop, candidates, indices)
-    } else updateBelow(a, size, done, stop, stop, leaving)
+    } else updateBelow(a, size, done, stop, stop, leaving, simd)
     done = stop
   }
   return done
@@ -72,7 +79,15 @@ function sumOf(a: Float64Array, from: number, to: number): number {
 }
 
 /** Applies pivots first … stop - 1 to the rows from `below` on. */
-function updateBelow(a: Float64Array, size: number, first: number, stop: number, below: number, leaving: Float64Array) {
+function updateBelow(
+  a: Float64Array,
+  size: number,
+  first: number,
+  stop: number,
+  below: number,
+  leaving: Float64Array,
+  simd: SimdProducts | undefined,
+): void {
   const width = stop - first
   if (width === 0) return
   for (let i = below; i < size; i++) {
@@ -83,7 +98,13 @@ function updateBelow(a: Float64Array, size: number, first: number, stop: number,
       for (let j = q + 1, from = q * size; j < stop; j++) a[row + j] += share * a[from + j]
     }
   }
-  addProducts(a, size, first, width, below, stop)
+  if (size - below >= smallestForSimd && simd?.add(a, size, first, width, below, stop)) {
+    // Whole blocks of four by four are done; what is left over stands at the right and at the bottom.
+    const columns = stop + ((size - stop) & ~3)
+    const rows = below + ((size - below) & ~3)
+    if (columns < size) for (let i = below; i < size; i++) addToEntries(a, size, first, width, i, columns, size)
+    for (let i = rows; i < size; i++) addToEntries(a, size, first, width, i, stop, columns)
+  } else addProducts(a, size, first, width, below, stop)
 }
 
 /** a_ij += Σ_q a_iq a_qj for i ≥ rows, j ≥ columns and the `width` pivots q from `first` on: four by four at a time. */

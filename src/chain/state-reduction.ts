@@ -2,6 +2,7 @@ import { StillmarkError } from '../errors/stillmark-error.js'
 import { unitRoundoff } from '../numbers/double-double.js'
 import { eliminateLeading } from './dense-elimination.js'
 import type { EliminationPlan, SparseRates } from './elimination-plan.js'
+import { simdProducts } from './simd-products.js'
 
 /** A front that has been eliminated. */
 interface Front {
@@ -34,6 +35,9 @@ export interface Reduction {
   readonly relativeError: number
 }
 
+/** Smaller fronts are eliminated by the plain loop. */
+const smallestForSimd = 64
+
 /** States that are left with less than this part of the largest rate are kept back: below, shares would underflow. */
 const leastLeaving = 1e-150
 
@@ -58,6 +62,7 @@ export function reduceStates(rates: SparseRates, plan: EliminationPlan, onFront?
   const local = new Int32Array(n)
   // What arcs into a front's states: the transpose, so that a front finds the rates from its boundary.
   const incoming = transpose(rates)
+  const simd = simdProducts()
   const updates: (Update[] | undefined)[] = new Array(count)
   const fronts: Front[] = []
   let operations = 0
@@ -75,7 +80,7 @@ export function reduceStates(rates: SparseRates, plan: EliminationPlan, onFront?
     for (let k = 0; k < kept.length; k++) states[own + k] = kept[k]
     for (let k = pivots; k < size; k++) states[k] = order[boundary[boundaryStart[t] + k - pivots]]
     for (let k = 0; k < size; k++) local[states[k]] = k
-    const a = new Float64Array(size * size)
+    const a = size < smallestForSimd || simd === undefined ? new Float64Array(size * size) : simd.matrix(size * size)
     for (let k = 0; k < own; k++) {
       const state = states[k]
       for (let arc = rowStart[state]; arc < rowStart[state + 1]; arc++) {
@@ -91,7 +96,7 @@ export function reduceStates(rates: SparseRates, plan: EliminationPlan, onFront?
 
     const leaving = new Float64Array(pivots)
     const isLast = parent[t] < 0
-    let done = eliminateLeading(a, size, pivots, states, leaving, leastLeaving)
+    let done = eliminateLeading(a, size, pivots, states, leaving, leastLeaving, simd)
     if (isLast && done < size - 1) {
       // Nothing can be handed on: states that are all but cut off from one another go as long as a double can follow.
       const more = eliminateRest(a, size, done, states, leaving)
@@ -129,9 +134,10 @@ interface Update {
 
 function addUpdate(a: Float64Array, size: number, { states, matrix }: Update, local: Int32Array): void {
   const count = states.length
-  for (let i = 0; i < count; i++) {
-    const row = local[states[i]] * size
-    for (let j = 0, k = i * count; j < count; j++, k++) a[row + local[states[j]]] += matrix[k]
+  const place = Int32Array.from(states, (state) => local[state])
+  for (let i = 0, k = 0; i < count; i++) {
+    const row = place[i] * size
+    for (let j = 0; j < count; j++, k++) a[row + place[j]] += matrix[k]
   }
 }
 
@@ -162,7 +168,13 @@ function eliminateRest(a: Float64Array, size: number, done: number, states: Int3
 
 function factorsOf(a: Float64Array, size: number, pivots: number, states: Int32Array, leaving: Float64Array): Front {
   const shares = new Float64Array(pivots * size)
-  for (let i = 0; i < size; i++) for (let k = 0; k < Math.min(pivots, i); k++) shares[k * size + i] = a[i * size + k]
+  // Transposed in squares that stay in the fastest cache.
+  for (let from = 0; from < size; from += 32) {
+    const to = Math.min(from + 32, size)
+    for (let k = 0; k < Math.min(pivots, to); k++) {
+      for (let i = Math.max(from, k + 1); i < to; i++) shares[k * size + i] = a[i * size + k]
+    }
+  }
   return { pivots, states, shares, rates: a.slice(0, pivots * size), leaving: leaving.slice(0, pivots) }
 }
 

@@ -8,8 +8,12 @@ import { mixedMean, type WeightedClass } from './mixture.js'
 import { largestRational, solveRationally } from './rational-solution.js'
 import { valuesIn } from './state-functions.js'
 
-/** Up to so many points a bound of its own is worked out for each; beyond it one for all. */
+/** Up to so many points, and so many points times states, each gets a bound of its own; beyond it one serves all. */
 const sharpPoints = 64
+const sharpEntries = 1e6
+
+/** A bound for all that is no better than this says nothing: then each point gets its own, whatever it takes. */
+const uselessBound = 1e-3
 
 /** The distinct values of a function, ascending, and which states take each. */
 interface Levels {
@@ -53,7 +57,9 @@ export function distributionOf(
 ): ExactMeasure {
   const levels = levelsOf(classes.map(({ solved }) => valuesIn(chain, solved.chain.states, of, measure)))
   const count = levels.values.length
-  if (count <= sharpPoints) {
+  const entries = classes.reduce((sum, { solved }) => sum + count * solved.chain.size, 0)
+  const useless = classes.some(({ solved }) => solved.spreadError > uselessBound)
+  if (count <= sharpPoints && (entries <= sharpEntries || useless)) {
     const means = Array.from(levels.values, (_, k) =>
       mixedMean(
         classes,

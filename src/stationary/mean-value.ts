@@ -1,4 +1,3 @@
-import { rewardUntilRoot } from '../chain/state-reduction.js'
 import { compensatedDot } from '../numbers/compensated-sum.js'
 import { generatorImage } from './poisson-residual.js'
 import type { SolvedClass } from './solved-class.js'
@@ -57,7 +56,7 @@ export function meanValue(solved: SolvedClass, f: StateFunction, sharp = true): 
   }
   const reward = new Float64Array(n)
   for (let i = 0; i < n; i++) reward[i] = value - f.value[i]
-  const h = rewardUntilRoot(solved.reduction, reward)
+  const h = solved.poisson(reward)
   const { image, evaluationError, inputError } = generatorImage(chain, h)
   let first = 0
   let firstError = 0

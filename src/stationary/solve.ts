@@ -11,9 +11,6 @@ import { stateFunction } from './state-functions.js'
 
 export type { SolveOptions } from './solved-class.js'
 
-/** Up to so many states the method is called by its plain name: the fronts are few and nearly full. */
-const denseStates = 2000
-
 /**
  * The exact long-run answer of a finite chain: each closed class that the start can reach is solved on its own, and the
  * classes are mixed by the probabilities of ending in them. Shares are shares of time, so a period changes nothing.
@@ -48,7 +45,7 @@ export function solve(
     relativeError = Math.max(relativeError, sharesRelativeError(solved) + weightError / weight + 2 ** -53)
   }
   const answer: ExactAnswer = {
-    method: methodOf(total, classes.length),
+    method: methodOf(classes, total),
     measures: measuresOf(model, chain, classes, true),
     shares,
     sharesRelativeError: relativeError,
@@ -63,10 +60,12 @@ export function solve(
   }
 }
 
-function methodOf(states: number, classes: number): string {
-  const name = states <= denseStates ? 'GTH elimination' : 'sparse GTH elimination by nested dissection'
+/** "GTH elimination, 25 states". */
+function methodOf(classes: readonly WeightedClass[], states: number): string {
+  const names = [...new Set(classes.map(({ solved }) => solved.method))].join(' and ')
   const counted = `${states.toLocaleString('en-US')} ${states === 1 ? 'state' : 'states'}`
-  return `${name}, ${counted}${classes === 1 ? '' : ` in ${classes.toLocaleString('en-US')} closed classes`}`
+  const places = classes.length === 1 ? '' : ` in ${classes.length.toLocaleString('en-US')} closed classes`
+  return `${names}, ${counted}${places}`
 }
 
 /** @param strict a ratio of nothing is an error, not left out */

@@ -1,9 +1,11 @@
-import { planElimination } from '../chain/elimination-plan.js'
+import { type EliminationPlan, planElimination } from '../chain/elimination-plan.js'
 import { type Reduction, reduceStates, rewardUntilRoot, stationaryVector } from '../chain/state-reduction.js'
 import { StillmarkError } from '../errors/stillmark-error.js'
 import { compensatedSum } from '../numbers/compensated-sum.js'
+import { aggregationLevels } from './aggregation-levels.js'
 import { type BalanceResidual, balanceResidual, smallestJudged } from './balance-residual.js'
 import type { ClosedChain } from './closed-chain.js'
+import { cycleInPlace, heaviest, multilevelSolution } from './multilevel.js'
 import { generatorImage } from './poisson-residual.js'
 
 /** The long-run shares of one closed class, and what bounds on their error are made from. */
@@ -13,7 +15,10 @@ export interface SolvedClass {
   readonly share: Float64Array
   readonly sumError: number
   readonly balance: BalanceResidual
-  readonly reduction: Reduction
+  /** What was done: `GTH elimination`. */
+  readonly method: string
+  /** h with Σ_j q_ij (h_i - h_j) about reward_i, where the mean of `reward` is about 0. */
+  readonly poisson: (reward: Float64Array) => Float64Array
   /**
    * Bound on the relative error of every share of at least `smallestJudged`, against the numbers as written;
    * Infinity where none is known.
@@ -42,16 +47,86 @@ export const acceptedResidual = 1e-12
 /** A relative error above this is not given out: the bounds are of first order. */
 const largestRelativeError = 0.01
 
-/** @throws memory-limit, residual-too-large (limit); interrupted */
+/** Eliminations of up to so many operations are done without a look at anything else: some ten seconds. */
+const cheapOperations = 3e10
+
+/** And of up to so many where the multilevel method does not settle: some two minutes. */
+const bearableOperations = 4e11
+
+/** From so many operations on, a few cheap cycles first tell which state should be the root. */
+const worthAGuess = 1e8
+
+/** Below this part of the heaviest share, a root is so rare that times to it would spoil the bounds. */
+const rareRoot = 0.01
+
+/** Up to so many states elimination is called by its plain name: the fronts are few and nearly full. */
+const denseStates = 2000
+
+/**
+ * The stationary vector of one closed class: by elimination where that is cheap, else by multilevel aggregation, else by
+ * elimination as far as memory and some minutes reach.
+ *
+ * @throws memory-limit, residual-too-large, range-exceeded (limit); interrupted
+ */
 export function solveClass(chain: ClosedChain, options: SolveOptions): SolvedClass {
-  const plan = planElimination(chain, chain)
   const budget = options.maxMemoryBytes ?? defaultMemory
-  if (plan.bytes > budget) throw memoryExceeded(chain.size, plan.bytes, budget)
-  const reduction = reduceStates(chain, plan, (done) => {
+  const stopIfCalledOff = () => {
     if (options.signal?.aborted) throw interrupted()
-    options.onProgress?.(done)
+  }
+  stopIfCalledOff()
+  const plan = planElimination(chain, chain)
+  if (plan.operations <= cheapOperations && plan.bytes <= budget) return solveByElimination(chain, plan, options)
+  const levelsBytes = multilevelBytes(chain)
+  if (levelsBytes > budget) throw memoryExceeded(chain.size, Math.min(levelsBytes, plan.bytes), budget)
+  const solution = multilevelSolution(chain, (worst) => {
+    stopIfCalledOff()
+    // From a first residual of about 1 down to 1e-13, by its logarithm.
+    options.onProgress?.(Math.min(1, Math.max(0, -Math.log10(worst) / 13)))
   })
-  const share = stationaryVector(reduction)
+  if (solution.worstRelative <= acceptedResidual) {
+    const balance = balanceResidual(chain, solution.share)
+    return {
+      chain,
+      share: solution.share,
+      sumError: sumErrorOf(solution.share),
+      balance,
+      method: `multilevel aggregation (${solution.cycles} cycles)`,
+      poisson: (reward) => {
+        stopIfCalledOff()
+        return solution.poisson(reward)
+      },
+      relativeError: Number.POSITIVE_INFINITY,
+      spreadError: 1 + sumErrorOf(solution.share), // all that is certain of two distributions
+    }
+  }
+  if (plan.operations > bearableOperations) throw residualTooLarge(solution.worstRelative)
+  if (plan.bytes > budget) throw memoryExceeded(chain.size, plan.bytes, budget)
+  return solveByElimination(chain, plan, options)
+}
+
+function solveByElimination(chain: ClosedChain, plan: EliminationPlan, options: SolveOptions): SolvedClass {
+  const reduce = (how: EliminationPlan) =>
+    reduceStates(chain, how, (done) => {
+      if (options.signal?.aborted) throw interrupted()
+      options.onProgress?.(done)
+    })
+  let reduction: Reduction
+  let share: Float64Array
+  if (plan.operations >= worthAGuess) {
+    const guess = new Float64Array(chain.size).fill(1 / chain.size)
+    const level = aggregationLevels(chain)
+    for (let cycle = 0; cycle < 3; cycle++) cycleInPlace(level, guess)
+    reduction = reduce(planElimination(chain, chain, heaviest(guess)))
+    share = stationaryVector(reduction)
+  } else {
+    reduction = reduce(plan)
+    share = stationaryVector(reduction)
+    const heavy = heaviest(share)
+    if (share[reduction.root] < rareRoot * share[heavy]) {
+      reduction = reduce(planElimination(chain, chain, heavy))
+      share = stationaryVector(reduction)
+    }
+  }
   const balance = balanceResidual(chain, share)
   if (!(balance.worstRelative <= acceptedResidual)) throw residualTooLarge(balance.worstRelative)
   let input = 0
@@ -63,19 +138,26 @@ export function solveClass(chain: ClosedChain, options: SolveOptions): SolvedCla
   return {
     chain,
     share,
-    sumError: Math.abs(compensatedSum(share) - 1) + 2 ** -52,
+    sumError: sumErrorOf(share),
     balance,
-    reduction,
+    method: chain.size <= denseStates ? 'GTH elimination' : 'sparse GTH elimination by nested dissection',
+    poisson: (reward) => rewardUntilRoot(reduction, reward),
     relativeError: relativeError <= largestRelativeError ? relativeError : Number.POSITIVE_INFINITY,
     spreadError: spreadErrorOf(chain, share, balance, reduction),
   }
 }
 
+const sumErrorOf = (share: Float64Array): number => Math.abs(compensatedSum(share) - 1) + 2 ** -52
+
+/** Levels halve or better, so they come to twice the first; the kept vectors of the Poisson solver, to 30 a state. */
+const multilevelBytes = ({ size, rate }: ClosedChain): number => 2 * (28 * rate.length + 48 * size) + 240 * size
+
 /** The entries' relative error where all entries have digits to judge, else Infinity. */
 export function sharesRelativeError({ share, relativeError, spreadError }: SolvedClass): number {
   let smallest = 1
   for (const each of share) if (each < smallest) smallest = each
-  return smallest < smallestJudged ? Number.POSITIVE_INFINITY : Math.min(relativeError, spreadError / smallest)
+  const bound = smallest < smallestJudged ? Number.POSITIVE_INFINITY : Math.min(relativeError, spreadError / smallest)
+  return bound <= largestRelativeError ? bound : Number.POSITIVE_INFINITY
 }
 
 /**
@@ -105,17 +187,17 @@ function spreadErrorOf(
   for (let i = 0; i < n; i++) {
     sum += (Math.abs(balance.residual[i]) + balance.evaluationError[i] + balance.inputError[i]) * time[i]
   }
-  const total = Math.abs(compensatedSum(share) - 1) + 2 ** -52
-  return (sum / least) * (1 + n * 2 ** -52) + total
+  return (sum / least) * (1 + n * 2 ** -52) + sumErrorOf(share)
 }
 
-const gigabytes = (bytes: number) => `${(bytes / 1e9).toPrecision(2)} GB`
+const memoryText = (bytes: number) =>
+  bytes >= 1e9 ? `${(bytes / 1e9).toPrecision(2)} GB` : `${(bytes / 1e6).toPrecision(2)} MB`
 
 const memoryExceeded = (states: number, bytes: number, budget: number) =>
   new StillmarkError(
     {
       code: 'memory-limit',
-      what: `The exact answer for ${states.toLocaleString('en-US')} states would take ${gigabytes(bytes)} of memory; ${gigabytes(budget)} are allowed.`,
+      what: `The exact answer for ${states.toLocaleString('en-US')} states would take ${memoryText(bytes)} of memory; ${memoryText(budget)} are allowed.`,
       next: 'Allow more with --max-memory, or make the model smaller.',
     },
     'limit',
