@@ -75,7 +75,9 @@ export function* replicateEnumerated(task: EnumeratedTask, replication: number):
       yield
     }
     const row = (replication * batches + stretch) * sums.sum.length
-    if (stretch >= 0) closeBatch(sums, lengthOf(settings, stretch), output.means, row)
+    if (stretch < 0) continue
+    closeBatch(sums, lengthOf(settings, stretch), output.means, row)
+    output.completed[replication] = stretch + 1
   }
   finish(task, replication, walk)
 }

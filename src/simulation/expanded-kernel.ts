@@ -68,6 +68,7 @@ export function* replicateExpanded(
       yield
     }
     if (stretch >= 0) {
+      output.completed[replication] = stretch + 1
       closeBatch(walk.sums, length, output.means, (replication * settings.batches + stretch) * width)
       walk.timeAt.forEach((times, h) => {
         valueTimes[h].push({ values: Float64Array.from(times.keys()), times: Float64Array.from(times.values()) })

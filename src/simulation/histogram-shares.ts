@@ -3,18 +3,15 @@ import { histogramBatches } from './histogram-batches.js'
 import type { MeasureObservations, RunSettings } from './observations.js'
 import type { EnumeratedTask } from './task.js'
 
-/**
- * Shares of time from the times in the bins of an enumerated chain.
- * @param completed batches of the settings that each replication completed, length R
- */
-export function sharesOfBins(task: EnumeratedTask, histogram: number, completed: Int32Array): MeasureObservations {
+/** Shares of time from the times in the bins of an enumerated chain; batches that were not completed become NaN. */
+export function sharesOfBins(task: EnumeratedTask, histogram: number): MeasureObservations {
   const { replications, runLength, batches: all } = task.settings
   const values = task.binValues[histogram]
   const batches = task.binBatches[histogram]
   const length = runLength / batches
   const shares = Float64Array.from(task.binTimes[histogram], (time) => time / length)
   for (let r = 0; r < replications; r++) {
-    const whole = Math.floor((completed[r] * batches) / all)
+    const whole = Math.floor((task.output.completed[r] * batches) / all)
     shares.fill(Number.NaN, (r * batches + whole) * values.length, (r + 1) * batches * values.length)
   }
   return { kind: 'histogram', values, shares, batches }

@@ -65,6 +65,7 @@ export async function replicate(
       means: memory.doubles(replications * batches * width).fill(Number.NaN),
       events: memory.doubles(replications),
       stoppedAt: memory.doubles(replications).fill(Number.NaN),
+      completed: memory.integers(replications),
       fraction: memory.doubles(replications),
       endState: memory.integers(replications),
       endValues: memory.doubles(chain === undefined && model.kind === 'variables' ? replications * model.width : 0),

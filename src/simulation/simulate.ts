@@ -62,21 +62,15 @@ export function columnOf({ columns, task }: Pick<Replicated, 'columns' | 'task'>
 
 /** Replications that ran out of events, ascending. */
 export function stoppedOf({ task }: Pick<Replicated, 'task'>): readonly StoppedReplication[] {
-  const { warmUp, runLength, batches } = task.settings
-  return Array.from(task.output.stoppedAt).flatMap((time, replication) =>
-    Number.isNaN(time)
-      ? []
-      : [{ replication, time, batches: Math.max(0, Math.floor(((time - warmUp) / runLength) * batches)) }],
+  const { stoppedAt, completed } = task.output
+  return Array.from(stoppedAt).flatMap((time, replication) =>
+    Number.isNaN(time) ? [] : [{ replication, time, batches: completed[replication] }],
   )
 }
 
 function histogramOf(run: Replicated, histogram: number): MeasureObservations {
   const { task, valueTimes, columns } = run
-  const completed = new Int32Array(task.settings.replications).fill(task.settings.batches)
-  for (const { replication, batches } of stoppedOf(run)) completed[replication] = batches
-  if ('rowStart' in task) {
-    return sharesOfBins(task, histogram, completed)
-  }
+  if ('rowStart' in task) return sharesOfBins(task, histogram)
   const times = valueTimes.map((byHistogram) => byHistogram[histogram])
   return sharesOfValueTimes(task.settings, columns.histogramNames[histogram], times)
 }

@@ -47,6 +47,8 @@ export interface Output {
   readonly events: Float64Array
   /** Length R: time from the start (warm-up included) at which a replication ran out of events; NaN where it did not. */
   readonly stoppedAt: Float64Array
+  /** Length R: batches completed. */
+  readonly completed: Int32Array
   /** Length R: share of its time that each replication has simulated. */
   readonly fraction: Float64Array
   /** Length R: state at the end; enumerated chains only. */
