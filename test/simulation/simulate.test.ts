@@ -1,10 +1,14 @@
 import { Matrix, solve } from 'ml-matrix'
 import { describe, expect, test } from 'vitest'
+import type { Chain } from '../../src/chain/chain.js'
 import { StillmarkError } from '../../src/errors/stillmark-error.js'
+import type { CompiledMeasure } from '../../src/model/model.js'
+import type { Scenario } from '../../src/scenario/scenario.js'
 import { streamOf } from '../../src/simulation/random-stream.js'
 import { simulate } from '../../src/simulation/simulate.js'
 import { batchMeansOf, deviations, digitsOf, meanOf, sharesOf } from './batch-figures.js'
 import { averageOf, distributionOf, handMadeChain, type Move, movesOf, ringChain } from './hand-made-chain.js'
+import { byFirst, handMadeModel, singleDesk } from './hand-made-model.js'
 
 const runs = { seed: 'facts', replications: 40, warmUp: 50, runLength: 2000, batches: 4 }
 
@@ -337,4 +341,64 @@ test.each([
   const { model, chain } = ringChain(10, 'continuous')
   const settings = { seed: '', replications: 1, warmUp: 0, runLength: 1, batches: 1, ...wrong }
   await expect(simulate(model, chain, settings)).rejects.toMatchObject({ code: 'bad-run-settings', kind: 'input' })
+})
+
+test('firings of a model by variables are counted by their labels, those that change nothing included', async () => {
+  // One place: come at rate 2 when free, turned away at rate 2 when taken, go at rate 3: taken 2/5 of the time.
+  const frequency = (name: string, ...weights: number[]): CompiledMeasure => ({
+    name,
+    kind: 'frequency',
+    of: { kind: 'frequency', weights: Float64Array.from(weights) },
+  })
+  const moves = [
+    { from: 0, label: 0, rate: 2, next: [1] },
+    { from: 1, label: 1, rate: 2, next: [1] },
+    { from: 1, label: 2, rate: 3, next: [0] },
+  ]
+  const model = handMadeModel(
+    'continuous',
+    [0],
+    ['come', 'turned_away', 'go'],
+    ({ 0: n }) => moves.filter(({ from }) => from === n),
+    [
+      frequency('coming', 1, 0, 0),
+      frequency('lost', 0, 1, 0),
+      frequency('all_offered', 1, 1, 0),
+      frequency('cost', 0, 2.5, -1),
+      { name: 'taken', kind: 'share', of: { kind: 'average', value: byFirst((n) => n) } },
+    ],
+  )
+  const chain: Chain = {
+    time: 'continuous',
+    size: 2,
+    start: 0,
+    width: 1,
+    values: Int32Array.of(0, 1),
+    elements: ['x0'],
+    rowStart: Int32Array.of(0, 1, 3),
+    target: Int32Array.of(1, 1, 0),
+    rate: Float64Array.of(2, 2, 3),
+    rateError: new Float64Array(3),
+    label: Int32Array.of(0, 1, 2),
+  }
+  for (const enumerated of [chain, undefined]) {
+    const observed = await simulate(model, enumerated, runs, { workers: 1 })
+    const expected = { coming: 1.2, lost: 0.8, all_offered: 2, cost: 0.8 * 2.5 - 1.2, taken: 0.4 }
+    for (const [name, value] of Object.entries(expected)) {
+      expect(Math.abs(deviations(observed, name, value))).toBeLessThan(farOff)
+    }
+  }
+})
+
+test('a measure without a finite value in some state is refused, naming the state', async () => {
+  const { model, chain } = handMadeChain('continuous', 2, [[0, 1, 1]], [averageOf('odd', [1, Number.NaN])])
+  await expect(simulate(model, chain, runs)).rejects.toMatchObject({
+    code: 'not-finite',
+    what: expect.stringMatching(/s1/),
+  })
+})
+
+test('workers that can not start end the run with an error, and leave nothing behind', async () => {
+  const unreadable = { ...singleDesk(1, 2), scenario: { body: 'no scenario' } as unknown as Scenario }
+  await expect(simulate(unreadable, undefined, runs, { workers: 2 })).rejects.toBeInstanceOf(Error)
 })
