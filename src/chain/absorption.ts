@@ -1,6 +1,7 @@
+import { StillmarkError } from '../errors/stillmark-error.js'
 import { unitRoundoff } from '../numbers/double-double.js'
 import type { JoinedArcs } from './chain.js'
-import { planElimination } from './elimination-plan.js'
+import { bearableOperations, planElimination } from './elimination-plan.js'
 import { reduceStates, stationaryVector } from './state-reduction.js'
 
 export interface Absorption {
@@ -19,6 +20,7 @@ export interface Absorption {
  *
  * @param classOf closed class of each state, -1 for transient ones
  * @param coordinates n × width, for the order of elimination
+ * @throws settling-too-large (limit)
  */
 export function absorptionFrom(
   start: number,
@@ -35,7 +37,9 @@ export function absorptionFrom(
   }
   const visited = transientFrom(start, arcs, classOf)
   const chain = returningChain(visited, arcs, classOf, coordinates)
-  const reduction = reduceStates(chain.rates, planElimination(chain.rates, chain.coordinates, 0))
+  const plan = planElimination(chain.rates, chain.coordinates, 0)
+  if (!(plan.operations <= bearableOperations && plan.bytes <= bearableBytes)) throw tooManyTransient(visited.length)
+  const reduction = reduceStates(chain.rates, plan)
   const share = stationaryVector(reduction)
   let occupied = 0
   let entered = 0
@@ -61,6 +65,19 @@ export function absorptionFrom(
   }
   return { reachedWith, reachedWithError, meanTime: occupied / entered }
 }
+
+/** What an elimination may take here. */
+const bearableBytes = 4e9
+
+const tooManyTransient = (states: number) =>
+  new StillmarkError(
+    {
+      code: 'settling-too-large',
+      what: `Where the model ends from its start hangs on ${states.toLocaleString('en-US')} states that it leaves for good, too closely knit to be followed exactly.`,
+      next: 'Start the model in the part that it stays in, or make it smaller.',
+    },
+    'limit',
+  )
 
 /** Transient states that the start can reach, itself first. */
 function transientFrom(start: number, { rowStart, target }: JoinedArcs, classOf: Int32Array): Int32Array {

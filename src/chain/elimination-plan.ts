@@ -30,18 +30,24 @@ export interface EliminationPlan {
   readonly bytes: number
 }
 
+/** Some minutes of work; what needs more is not begun. */
+export const bearableOperations = 4e11
+
 /**
  * The plan of a sparse elimination: everything that can be known before any rate is touched.
  *
  * Sources: nested dissection, George 1973; fronts, Duff and Reid 1983 (from memory).
  *
  * @param coordinates n × width, row-major: where each state lies, for cuts through the middle; empty where not known
+ * @param mostOperations where more turn out to be needed, planning stops: `operations` is then Infinity and the plan can't
+ *   be carried out
  * @param last a state that must not be eliminated before all others of its front, kept in the last front
  */
 export function planElimination(
   rates: SparseRates,
   coordinates: { readonly values: Int32Array; readonly width: number },
   last?: number,
+  mostOperations = bearableOperations,
 ): EliminationPlan {
   const n = rates.rowStart.length - 1
   const pattern = symmetricPattern(rates)
@@ -84,12 +90,17 @@ export function planElimination(
     const pivots = end - pivotStart[t]
     const size = pivots + boundary.length
     operations += eliminationOperations(size, pivots)
+    if (operations > mostOperations) {
+      operations = Number.POSITIVE_INFINITY
+      peak = Number.POSITIVE_INFINITY
+      break
+    }
     peak = Math.max(peak, factorBytes + waiting + 8 * size * size + 16 * pivots * size)
     factorBytes += 16 * pivots * size
     waiting += 8 * boundary.length ** 2 - taken
   }
-  const boundary = new Int32Array(boundaryStart[fronts])
-  for (let t = 0; t < fronts; t++) boundary.set(boundaries[t], boundaryStart[t])
+  const boundary = new Int32Array(boundaryStart[boundaries.length])
+  for (let t = 0; t < boundaries.length; t++) boundary.set(boundaries[t], boundaryStart[t])
   return { fronts, order, pivotStart, parent, boundaryStart, boundary, operations, bytes: peak }
 }
 

@@ -70,7 +70,8 @@ const reductionOf = (level: Level, root?: number): Reduction =>
 
 /** Cycles that are tried, and exponents: where over-correction does not settle, the plain correction does. */
 const mostCycles = 150
-const exponents = [overCorrection, 1.3, 1]
+const onGrids = [overCorrection, 1.3, 1]
+const onPairs = [1, 1.3]
 /** Worst relative residual at which the cycles stop: well inside what is accepted. */
 const wantedResidual = 1e-13
 /** Five cycles that don't bring the residual to this part of itself have lost their grip. */
@@ -92,7 +93,7 @@ export function multilevelSolution(chain: ClosedChain, onCycle?: (worst: number)
   let best = new Float64Array(chain.size).fill(1 / chain.size)
   let bestResidual = Number.POSITIVE_INFINITY
   let cycles = 0
-  for (const exponent of exponents) {
+  for (const exponent of chain.width > 0 ? onGrids : onPairs) {
     const share = best.slice()
     let last = Number.POSITIVE_INFINITY
     for (let k = 1; k <= mostCycles; k++) {

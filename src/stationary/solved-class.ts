@@ -1,4 +1,4 @@
-import { type EliminationPlan, planElimination } from '../chain/elimination-plan.js'
+import { bearableOperations, type EliminationPlan, planElimination } from '../chain/elimination-plan.js'
 import { type Reduction, reduceStates, rewardUntilRoot, stationaryVector } from '../chain/state-reduction.js'
 import { StillmarkError } from '../errors/stillmark-error.js'
 import { compensatedSum } from '../numbers/compensated-sum.js'
@@ -50,11 +50,8 @@ const largestRelativeError = 0.01
 /** Eliminations of up to so many operations are done without a look at anything else: some ten seconds. */
 const cheapOperations = 3e10
 
-/** And of up to so many where the multilevel method does not settle: some two minutes. */
-const bearableOperations = 4e11
-
-/** From so many operations on, a few cheap cycles first tell which state should be the root. */
-const worthAGuess = 1e8
+/** From so many operations an arc on, a few cheap cycles first tell which state should be the root. */
+const worthAGuess = 2000
 
 /** Below this part of the heaviest share, a root is so rare that times to it would spoil the bounds. */
 const rareRoot = 0.01
@@ -99,7 +96,7 @@ export function solveClass(chain: ClosedChain, options: SolveOptions): SolvedCla
       spreadError: 1 + sumErrorOf(solution.share), // all that is certain of two distributions
     }
   }
-  if (plan.operations > bearableOperations) throw residualTooLarge(solution.worstRelative)
+  if (!(plan.operations <= bearableOperations)) throw residualTooLarge(solution.worstRelative)
   if (plan.bytes > budget) throw memoryExceeded(chain.size, plan.bytes, budget)
   return solveByElimination(chain, plan, options)
 }
@@ -112,7 +109,7 @@ function solveByElimination(chain: ClosedChain, plan: EliminationPlan, options: 
     })
   let reduction: Reduction
   let share: Float64Array
-  if (plan.operations >= worthAGuess) {
+  if (plan.operations >= worthAGuess * chain.rate.length) {
     const guess = new Float64Array(chain.size).fill(1 / chain.size)
     const level = aggregationLevels(chain)
     for (let cycle = 0; cycle < 3; cycle++) cycleInPlace(level, guess)
