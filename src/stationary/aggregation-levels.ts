@@ -15,7 +15,7 @@ export interface Level extends SparseRates {
 }
 
 /** Levels of so few states are solved by elimination. */
-const coarsest = 400
+const coarsest = 200
 
 /** Where a level does not come down to this part of the finer one, coarsening has lost its grip and stops. */
 const leastShrinking = 0.9

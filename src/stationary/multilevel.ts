@@ -8,6 +8,13 @@ import { type LinearMap, minimalResidual } from './minimal-residual.js'
 /** Corrections from coarser levels fall short on grids by about this exponent (over-correction: Braess 1995). */
 const overCorrection = 1.7
 
+/**
+ * A coarser level is visited twice only where it has far fewer arcs: on a closely knit graph the aggregates stay coupled
+ * with all others, and visits would double from level to level at the same price each.
+ */
+const worthTwice = (level: Level, coarse: Level): boolean =>
+  coarse.coarser !== undefined && coarse.target.length <= 0.6 * level.target.length
+
 /** Refills the coarser rates with the flows that `share` gives, as conditional rates of the aggregates. */
 function refill(level: Level, share: Float64Array): Float64Array {
   const { level: coarse, aggregateOf, arcOf } = level.coarser as NonNullable<Level['coarser']>
@@ -58,7 +65,7 @@ export function cycleInPlace(level: Level, share: Float64Array, exponent = overC
   const before = refill(level, share)
   const after = before.slice()
   cycleInPlace(coarse, after, exponent)
-  if (coarse.coarser !== undefined) cycleInPlace(coarse, after, exponent)
+  if (worthTwice(level, coarse)) cycleInPlace(coarse, after, exponent)
   const factor = after.map((each, a) => (each / before[a]) ** exponent)
   for (let i = 0; i < share.length; i++) share[i] *= factor[aggregateOf[i]]
   sweepInPlace(level, share, false)
@@ -200,7 +207,7 @@ function correctInPlace(
   }
   const correction = new Float64Array(missing.length)
   correctInPlace(coarser, correction, missing)
-  if (coarser.coarser !== undefined) correctInPlace(coarser, correction, missing)
+  if (worthTwice(level, coarser.level)) correctInPlace(coarser, correction, missing)
   for (let i = 0; i < size; i++) h[i] += correction[aggregateOf[i]]
   relax(false)
   relax(true)
