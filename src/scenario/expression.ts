@@ -24,7 +24,12 @@ export type Expression = { readonly at?: Spot } & (
   | { readonly kind: 'transition'; readonly name: string; readonly copy?: readonly Expression[] }
   | { readonly kind: 'negate'; readonly of: Expression }
   | { readonly kind: 'not'; readonly of: Expression }
-  | { readonly kind: 'arithmetic'; readonly op: ArithmeticOperator; readonly left: Expression; readonly right: Expression }
+  | {
+      readonly kind: 'arithmetic'
+      readonly op: ArithmeticOperator
+      readonly left: Expression
+      readonly right: Expression
+    }
   | { readonly kind: 'compare'; readonly op: Comparison; readonly left: Expression; readonly right: Expression }
   | { readonly kind: 'logic'; readonly op: 'and' | 'or'; readonly left: Expression; readonly right: Expression }
   | { readonly kind: 'if'; readonly condition: Expression; readonly yes: Expression; readonly no: Expression }
