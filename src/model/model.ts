@@ -1,6 +1,10 @@
 import type { Fraction } from '../numbers/fraction.js'
 import type { Scenario } from '../scenario/scenario.js'
 
+// Rooms further right may import this room but not `scenario`: what they need of it comes through here.
+export type { Expression } from '../scenario/expression.js'
+export type { Scenario, StateVariable, TransitionRule } from '../scenario/scenario.js'
+
 /**
  * A checked scenario, compiled. `variables`: states are vectors of integers, moves are made by `expand`.
  * `table`: states are numbered and named, moves are listed.
