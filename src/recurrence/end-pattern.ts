@@ -1,0 +1,175 @@
+import type { VariablesModel } from '../model/model.js'
+import { climbRoom, type EndClass, endClasses } from './end-class.js'
+import { type End, phaseIndex, readEnd, remainder } from './ends.js'
+import { type Exploration, exploreWithin } from './exploration.js'
+import { agreesAt, type Copy } from './moves.js'
+import { NotFollowed } from './rational.js'
+
+/** States that are listed in all, and how often the listing is carried further out. */
+const mostStates = 250_000
+const mostDoublings = 6
+
+/** An end with the phases that are truly met on it. */
+export interface MetEnd {
+  readonly end: End
+  readonly classes: readonly EndClass[]
+  /** Counts up to this are listed. */
+  readonly top: number
+  /** A multiple of the modulus, at least every jump: what is met repeats with it beyond `top - window`. */
+  readonly window: number
+  /** `phase|count modulo window` of what is met there. */
+  readonly met: ReadonlySet<string>
+  readonly phaseOf: (state: readonly number[]) => number | undefined
+}
+
+export interface Ground {
+  readonly exploration: Exploration
+  readonly ends: readonly MetEnd[]
+}
+
+export const countOf = ({ element, outward }: End, state: readonly number[]): number => state[element] * outward
+
+/**
+ * Reads the ends of a model with one unbounded element and lists its states until what is met far out repeats itself
+ * in a way that the moves far out can't leave: then the listed states below are all there are (an invariant, checked
+ * phase by phase).
+ * @throws NotFollowed
+ */
+export function groundOf(
+  model: VariablesModel,
+  copies: readonly Copy[],
+  element: number,
+  directions: readonly (1 | -1)[],
+  sample: Exploration,
+): Ground {
+  const least = directions.length > 1 ? 1 : 0
+  const settled = directions.map((outward) => settledEnd(model, copies, element, outward, sample, least, directions))
+  const classes = settled.map((end) => endClasses(end, model.time))
+  const jumps = settled.map((end) => Math.max(1, ...end.arcs.flat().map(({ jump }) => Math.abs(jump))))
+  const phases = Math.max(...settled.map((end) => end.phases.length / end.modulus))
+  let tops = settled.map((end, k) => {
+    const room = Math.max(...classes[k].map((own) => climbRoom(end, own)))
+    const wanted = end.level + room + 8 * (jumps[k] + end.modulus) + 8
+    const affordable = Math.floor(mostStates / (settled.length * Math.max(1, phases)))
+    return Math.max(Math.min(wanted, affordable), end.level + 6 * (jumps[k] + end.modulus))
+  })
+  for (let attempt = 0; attempt < mostDoublings; attempt++) {
+    const exploration = exploreWithin(
+      model,
+      (state) => settled.every((end, k) => countOf(end, state) <= tops[k]),
+      mostStates * 2,
+    )
+    if (!exploration.complete) throw new NotFollowed('too many states have to be listed')
+    const ends = settled.map((end, k) => metEnd(end, classes[k], tops[k], jumps[k], exploration))
+    if (ends.every((end) => end !== undefined)) {
+      probe(model, ends as MetEnd[])
+      return { exploration, ends: ends as MetEnd[] }
+    }
+    tops = tops.map((top) => top * 2)
+  }
+  throw new NotFollowed('what can be met far out does not repeat itself')
+}
+
+function settledEnd(
+  model: VariablesModel,
+  copies: readonly Copy[],
+  element: number,
+  outward: 1 | -1,
+  sample: Exploration,
+  least: number,
+  directions: readonly (1 | -1)[],
+): End {
+  const counts = sample.states.map((state) => state[element] * outward)
+  const seedsFrom = (states: Exploration['states'], from: number) =>
+    states.filter((state) => state[element] * outward >= from)
+  let guess = Math.max(least, Math.floor(Math.max(...counts) / 2))
+  let end = readEnd(model, copies, element, outward, seedsFrom(sample.states, guess))
+  let known = sample
+  for (let attempt = 0; end.level > guess; attempt++) {
+    if (attempt === 6) throw new NotFollowed('the level beyond which the moves stay the same keeps moving')
+    guess = end.level
+    known = exploreWithin(model, (state) => directions.every((d) => state[element] * d <= guess + 4), mostStates)
+    const seeds = seedsFrom(known.states, guess)
+    if (seeds.length === 0) throw new NotFollowed('the level beyond which the moves stay the same is not reached')
+    end = readEnd(model, copies, element, outward, seeds)
+  }
+  // The level that was read may be far lower than the guess: then start there, if all phases met there agree.
+  const lower = Math.max(least, end.level)
+  if (lower < guess) {
+    const near = exploreWithin(model, (state) => directions.every((d) => state[element] * d <= guess + 4), mostStates)
+    try {
+      const tight = readEnd(model, copies, element, outward, seedsFrom(near.states, lower))
+      if (tight.level <= lower) return { ...tight, level: lower }
+    } catch (error) {
+      if (!(error instanceof NotFollowed)) throw error
+    }
+  }
+  return { ...end, level: guess }
+}
+
+function metEnd(
+  end: End,
+  classes: readonly EndClass[],
+  top: number,
+  jump: number,
+  exploration: Exploration,
+): MetEnd | undefined {
+  const phaseOf = phaseIndex(end)
+  const base = Math.ceil(jump / end.modulus) * end.modulus
+  for (let times = 1; times <= 6; times++) {
+    const window = base * times
+    if (top - 3 * window < end.level) return undefined
+    const met = new Set<string>()
+    let fits = true
+    exploration.states.forEach((state) => {
+      const count = countOf(end, state)
+      if (count <= top - window || count > top) return
+      const phase = phaseOf(state)
+      if (phase === undefined) fits = false
+      else met.add(`${phase}|${remainder(count, window)}`)
+    })
+    // What lies just below has to repeat it too: a pattern that is still filling up is not the last.
+    let below = 0
+    exploration.states.forEach((state) => {
+      const count = countOf(end, state)
+      if (count <= top - 2 * window || count > top - window) return
+      const phase = phaseOf(state)
+      if (phase !== undefined && met.has(`${phase}|${remainder(count, window)}`)) below++
+      else fits = false
+    })
+    if (!fits || below !== met.size) continue
+    const closed = [...met].every((key) => {
+      const [phase, residue] = key.split('|').map(Number)
+      return end.arcs[phase].every(
+        ({ to, jump: gain }) => to === undefined || met.has(`${to}|${remainder(residue + gain, window)}`),
+      )
+    })
+    const entered = exploration.states.every((state) => {
+      const count = countOf(end, state)
+      return count <= top || met.has(`${phaseOf(state)}|${remainder(count, window)}`)
+    })
+    if (closed && entered) return { end, classes, top, window, met, phaseOf }
+  }
+  return undefined
+}
+
+/** Phases that are probed, spread over all. */
+const probedPhases = 40
+
+/** Holds what was read against the model's own moves: at the level, beyond it, and far out. @throws NotFollowed */
+function probe(model: VariablesModel, ends: readonly MetEnd[]): void {
+  for (const { end, met, top } of ends) {
+    const keys = [...met]
+    const step = Math.max(1, Math.floor(keys.length / probedPhases))
+    for (let k = 0; k < keys.length; k += step) {
+      const phase = Number(keys[k].split('|')[0])
+      const place = end.phases[phase]
+      for (const from of [end.level, end.level + 1, top, 2 * top + 17, 1000 + 7 * k, 1_000_003 + 37 * k]) {
+        const count = from + remainder(place.residue - from, end.modulus)
+        if (!agreesAt(model, place, end.far[phase], [count])) {
+          throw new NotFollowed('the moves far out are not exactly those that were read')
+        }
+      }
+    }
+  }
+}
