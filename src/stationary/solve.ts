@@ -49,6 +49,7 @@ export function solve(
     measures: measuresOf(model, chain, classes, true),
     shares,
     sharesRelativeError: relativeError,
+    solved: classes.map((each) => each.solved),
   }
   if (structure.closedClasses.length === 1 || classes.length === 1) return answer
   return {

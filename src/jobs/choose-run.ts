@@ -1,0 +1,230 @@
+import { toleranceOf } from '../comparison/compare-measure.js'
+import { adjustedConfidence } from '../comparison/compare-run.js'
+import type { TimeAverage } from '../dynamics/time-average.js'
+import { warmUpCut } from '../estimation/marginal-standard-error.js'
+import { chooseRunLength, type MeasureNeed, pleasantAbove } from '../planning/run-length.js'
+import type { RunSettings } from '../simulation/observations.js'
+import { type PilotSeries, simulatePilot } from '../simulation/pilot.js'
+import type { ExactAnswer } from '../stationary/exact-answer.js'
+import type { Ground } from './ground.js'
+import type { Progress } from './options.js'
+import { runDefaults } from './run-defaults.js'
+import type { RunRequest } from './run-request.js'
+
+/** What is run, and why so. */
+export interface ChosenRun {
+  readonly settings: RunSettings
+  readonly warmUpRule: string
+  readonly warmUpBasis: string
+  readonly runLengthBasis: string
+  /** Why the rule's cut is not to be believed. */
+  readonly unsettled?: string
+}
+
+/** Points that a pilot's time is cut into, a multiple of MSER's batches of five. */
+const pilotPoints = 1000
+/** Firings a replication of the first pilot has; each further one is four times as long. */
+const firstPilot = 1000
+const pilotEvents = 6e6
+/** A cut within this part of the pilot's length is early enough to be believed. */
+const earlyCut = 0.25
+/** Events in all, where the moves of each state are worked out as it is met. */
+const eventsWithoutStates = 8e6
+
+export async function chooseRun(
+  ground: Ground,
+  exact: ExactAnswer | undefined,
+  averages: Readonly<Record<string, TimeAverage>>,
+  request: RunRequest,
+  report: { readonly onProgress: (progress: Progress) => void; readonly signal: AbortSignal },
+): Promise<ChosenRun> {
+  const { model, finite } = ground
+  const { seed, replications, confidence } = request
+  const discrete = model.time === 'discrete'
+  const whole = (time: number): number => (discrete ? Math.max(1, Math.ceil(time)) : time)
+  let pilot: PilotSeries | undefined
+  let warmUp = request.warmUp === undefined ? 0 : discrete ? Math.ceil(request.warmUp) : request.warmUp
+  let warmUpRule = 'given'
+  let warmUpBasis = 'as given'
+  let unsettled: string | undefined
+  if (request.warmUp === undefined || request.runLength === undefined) {
+    const found = await pilotWarmUp(ground, exact, request, report)
+    pilot = found.pilot
+    if (request.warmUp === undefined) {
+      warmUp = found.warmUp
+      warmUpRule = 'MSER-5 on pilot replications'
+      warmUpBasis = found.basis
+      unsettled = found.unsettled
+    }
+  }
+  let runLength = request.runLength
+  let runLengthBasis = 'as given'
+  if (runLength === undefined) {
+    const perTimeUnit = eventsPerTimeUnit(ground, exact, pilot)
+    const chosen = chooseRunLength(
+      exact === undefined && pilot !== undefined
+        ? pilotNeeds(pilot, warmUp, request)
+        : needsOf(ground, exact, averages, request),
+      {
+        replications,
+        confidence: adjustedConfidence(confidence, model.measures.length),
+        eventsPerTimeUnit: perTimeUnit,
+        maxEvents: finite === undefined ? eventsWithoutStates : runDefaults.events,
+        warmUp,
+      },
+    )
+    runLength = chosen.runLength
+    runLengthBasis = chosen.basis
+  }
+  return {
+    settings: {
+      seed,
+      replications,
+      warmUp,
+      runLength: whole(runLength),
+      batches: batchesOf(ground, runLength, discrete),
+    },
+    warmUpRule,
+    warmUpBasis,
+    runLengthBasis,
+    ...(unsettled === undefined ? {} : { unsettled }),
+  }
+}
+
+/**
+ * Where several closed classes can be reached, a replication as a whole is one observation of where it ends: its batches
+ * say nothing of that. In discrete time there is no more than one batch a step.
+ */
+function batchesOf({ finite }: Ground, runLength: number, discrete: boolean): number {
+  const reached = finite?.structure.closedClasses.filter((each) => each.reachedWith > 0).length ?? 1
+  if (reached > 1) return 1
+  let batches: number = runDefaults.batches
+  while (discrete && batches > Math.max(1, runLength)) batches /= 2
+  return batches
+}
+
+function eventsPerTimeUnit(
+  { model, finite }: Ground,
+  exact: ExactAnswer | undefined,
+  pilot: PilotSeries | undefined,
+): number {
+  if (model.time === 'discrete') return 1
+  if (finite !== undefined && exact?.shares !== undefined) {
+    const { rowStart, rate, size } = finite.chain
+    let total = 0
+    for (let i = 0; i < size; i++)
+      for (let arc = rowStart[i]; arc < rowStart[i + 1]; arc++) total += exact.shares[i] * rate[arc]
+    return total
+  }
+  return pilot === undefined ? 1 : pilot.events / (pilot.settings.replications * pilot.settings.length)
+}
+
+function needsOf(
+  { model }: Ground,
+  exact: ExactAnswer | undefined,
+  averages: Readonly<Record<string, TimeAverage>>,
+  { tolerance }: RunRequest,
+): MeasureNeed[] {
+  if (exact === undefined) return []
+  return model.measures.flatMap(({ name }) => {
+    const value = exact.measures[name]
+    const known = averages[name]
+    if (known === undefined || !('value' in value)) return []
+    const { varianceConstant, correlationTime } = known
+    return [{ name, varianceConstant, correlationTime, tolerance: toleranceOf(value.value, tolerance) }]
+  })
+}
+
+/**
+ * Needs as a pilot shows them: the variance constant from the spread of its replications' means after the warm-up. Rough,
+ * but it only sets the length of the run; the run's own intervals do not rest on it.
+ */
+function pilotNeeds(
+  { settings, interval, measures }: PilotSeries,
+  warmUp: number,
+  { tolerance }: RunRequest,
+): MeasureNeed[] {
+  const { replications, points } = settings
+  const from = Math.min(Math.floor(points / 2), Math.ceil(warmUp / interval))
+  const length = (points - from) * interval
+  const meansOf = (series: Float64Array): number[] =>
+    Array.from({ length: replications }, (_, r) => {
+      let sum = 0
+      for (let i = from; i < points; i++) sum += series[r * points + i]
+      return sum / (points - from)
+    })
+  return Object.entries(measures).flatMap(([name, measure]) => {
+    const top = meansOf(measure.kind === 'mean' ? measure.means : measure.top)
+    const bottom = measure.kind === 'mean' ? undefined : meansOf(measure.bottom)
+    const mean = average(top)
+    const below = bottom === undefined ? 1 : average(bottom)
+    if (!Number.isFinite(mean / below)) return []
+    const value = mean / below
+    const deviations = top.map((each, r) => (each - value * (bottom?.[r] ?? 1)) / below)
+    const variance = deviations.reduce((sum, each) => sum + each ** 2, 0) / (replications - 1)
+    return [{ name, varianceConstant: variance * length, tolerance: toleranceOf(value, tolerance), correlationTime: 0 }]
+  })
+}
+
+const average = (values: readonly number[]): number => values.reduce((a, b) => a + b, 0) / values.length
+
+interface PilotWarmUp {
+  readonly pilot: PilotSeries
+  readonly warmUp: number
+  readonly basis: string
+  readonly unsettled?: string
+}
+
+/** Pilots of growing length until the rule's cut of every measure lies early in them. */
+async function pilotWarmUp(
+  ground: Ground,
+  exact: ExactAnswer | undefined,
+  { seed, replications, runLength, workers }: RunRequest,
+  { onProgress, signal }: { readonly onProgress: (progress: Progress) => void; readonly signal: AbortSignal },
+): Promise<PilotWarmUp> {
+  const { model, finite } = ground
+  const discrete = model.time === 'discrete'
+  const perTimeUnit = Math.max(eventsPerTimeUnit(ground, exact, undefined), 1e-300)
+  // A single long replication has no others to be averaged with: pilots always have a few.
+  const pilots = Math.max(replications, 8)
+  const longest = Math.min(runLength ?? Number.POSITIVE_INFINITY, pilotEvents / pilots / perTimeUnit)
+  let length = Math.min(firstPilot / perTimeUnit, longest)
+  for (;;) {
+    const steps = discrete ? Math.max(1, Math.ceil(length)) : length
+    const points = discrete && steps < pilotPoints ? steps : pilotPoints
+    onProgress({ stage: 'pilot' })
+    const pilot = await simulatePilot(
+      model,
+      finite?.chain,
+      { seed, replications: pilots, length: steps, points },
+      { workers, signal, maxEvents: Math.ceil((4 * pilotEvents) / pilots) },
+    )
+    const cuts = Object.values(pilot.measures).flatMap((measure) =>
+      (measure.kind === 'mean' ? [measure.means] : [measure.top, measure.bottom]).map((series) =>
+        warmUpCut(series, pilots),
+      ),
+    )
+    const worst = cuts.reduce((a, b) => (a.settled && (!b.settled || b.cut > a.cut) ? b : a), {
+      cut: 0,
+      settled: true,
+      why: 'nothing has to be deleted',
+    })
+    if (worst.settled && worst.cut <= earlyCut * points) {
+      const warmUp = worst.cut === 0 ? 0 : pleasantAbove((worst.cut * steps) / points)
+      return {
+        pilot,
+        warmUp: discrete ? Math.ceil(warmUp) : warmUp,
+        basis: `${worst.why} of ${pilots} averaged pilots`,
+      }
+    }
+    if (length >= longest || pilot.stoppedEarly !== undefined) {
+      return {
+        pilot,
+        warmUp: steps,
+        basis: 'the whole pilot is deleted',
+        unsettled: worst.settled ? 'the best cut lies late in the longest pilot' : worst.why,
+      }
+    }
+    length = Math.min(4 * length, longest)
+  }
+}
