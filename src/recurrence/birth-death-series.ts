@@ -36,8 +36,8 @@ export function birthDeathVerdict(
   const against = limit === undefined ? 1 : compare(limit, one)
   const exponent = against === 0 ? divide(slope, one) : undefined
   // Terms 1/(λₙπₙ): the ratio of the next to this one is λ(n)/λ(n+1) × μ(n+1)/λ(n) = μ(n+1)/λ(n+1).
-  const escape = expandedRatio(divideRationals(death, birth))
-  const recurrent = !converges(escape)
+  const escapeTerms = expandedRatio(divideRationals(death, birth))
+  const recurrent = !converges(escapeTerms)
   const weightsConverge = against < 0 || (exponent !== undefined && compare(exponent, fraction(-1)) < 0)
   const recurrence = recurrent ? (weightsConverge ? 'positive recurrent' : 'null recurrent') : 'transient'
   return {

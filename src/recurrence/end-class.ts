@@ -28,13 +28,13 @@ import {
 } from './phase-process.js'
 import {
   addRationals,
+  constantIn,
   expansionOf,
   multiplyRationals,
   orderOf,
   type Rational,
   rationalOf,
   rationalSign,
-  valueOf,
 } from './rational.js'
 
 /** A set of phases of an end that communicate far out, and what the level does while the process is in it. */
@@ -77,7 +77,7 @@ export function endClasses(end: End, time: 'continuous' | 'discrete'): EndClass[
   return members.map((own) => {
     const inside = new Map(own.map((phase, k) => [phase, k] as const))
     const closed = own.every((phase) => end.arcs[phase].every(({ to }) => to !== undefined && inside.has(to)))
-    const homogeneous = own.every((phase) => end.arcs[phase].every(({ rate }) => valueOf(rate) !== undefined))
+    const homogeneous = own.every((phase) => end.arcs[phase].every(({ rate }) => constantIn(rate) !== undefined))
     if (closed) return { members: own, closed, homogeneous, ...fateOf(end, own, inside, homogeneous, time) }
     // Constant rates: it is left after a time with an exponential tail, the level having moved by bounded jumps.
     return {
@@ -311,7 +311,7 @@ function pulledIn(
   const strong = drifts.map((drift) => orderOf(drift) >= 1 && rationalSign(drift)?.sign === -1)
   const weak = [...strong.keys()].filter((phase) => !strong[phase])
   if (weak.length === arcs.length || weak.length > exactPhases) return undefined
-  if (weak.some((phase) => arcs[phase].some(({ rate }) => valueOf(rate) === undefined))) return undefined
+  if (weak.some((phase) => arcs[phase].some(({ rate }) => constantIn(rate) === undefined))) return undefined
   const position = new Map(weak.map((phase, k) => [phase, k + 1] as const))
   // The strong phases are joined into phase 0, which leads nowhere: "mean drift" -1 elsewhere makes the correctors mean times.
   const joined: PhaseArcs = [
@@ -320,7 +320,7 @@ function pulledIn(
       arcs[phase].map(({ to, rate }) => ({
         to: position.get(inside.get(to as number) as number) ?? 0,
         jump: 0,
-        rate: valueOf(rate) as Fraction,
+        rate: constantIn(rate) as Fraction,
       })),
     ),
   ]
@@ -328,7 +328,7 @@ function pulledIn(
   const times = correctors(joined, negate(one))
   const most = weak.reduce(
     (high, phase) =>
-      compare(valueOf(drifts[phase]) as Fraction, high) > 0 ? (valueOf(drifts[phase]) as Fraction) : high,
+      compare(constantIn(drifts[phase]) as Fraction, high) > 0 ? (constantIn(drifts[phase]) as Fraction) : high,
     zero,
   )
   const factor = add(most, one)

@@ -22,6 +22,12 @@ export interface MetEnd {
   readonly phaseOf: (state: readonly number[]) => number | undefined
 }
 
+/** A class of phases that is truly met far out, on its end. */
+export interface MetClass {
+  readonly at: MetEnd
+  readonly own: EndClass
+}
+
 export interface Ground {
   readonly exploration: Exploration
   readonly ends: readonly MetEnd[]

@@ -2,9 +2,8 @@ import type { VariablesModel } from '../model/model.js'
 import { add, divide, equal, type Fraction, multiply, one, subtract, toNumber, zero } from '../numbers/fraction.js'
 import { driftFarOut } from './birth-death-series.js'
 import type { Classification, Prediction } from './classification.js'
-import { countOf, type Ground } from './end-pattern.js'
-import type { MetClass } from './one-variable.js'
-import { expansionOf, orderOf, valueOf } from './rational.js'
+import { countOf, type Ground, type MetClass } from './end-pattern.js'
+import { constantIn, expansionOf, orderOf } from './rational.js'
 
 /**
  * How a model without a steady state moves away: laws that follow from what was checked, none where none is sure.
@@ -156,7 +155,7 @@ function returnsOf(model: VariablesModel, ground: Ground, drift: Fraction | unde
     const ratio = divide(own.down, own.up)
     if (count >= end.level) {
       // From here on a geometric series.
-      if (valueOf(end.arcs[0][0].rate) === undefined || ratio.numerator >= ratio.denominator) return undefined
+      if (constantIn(end.arcs[0][0].rate) === undefined || ratio.numerator >= ratio.denominator) return undefined
       sum = add(sum, divide(multiply(term, ratio), subtract(one, ratio)))
       break
     }

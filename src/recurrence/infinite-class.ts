@@ -11,19 +11,20 @@ export interface InfiniteClass {
 }
 
 /**
- * The infinite closed class that the start can reach, where there is one and the listing shows it: a communicating
- * class of the listed states that holds every state met well below the top.
+ * The infinite closed class within a closed set of states, where the listing shows it: a communicating class of the
+ * listed states that nothing leaves but near the top.
+ *
+ * @param bottom indices of listed states
  */
 export function infiniteClass(
   model: VariablesModel,
   ground: Ground,
-  bottoms: readonly (readonly number[])[],
+  bottom: readonly number[],
 ): InfiniteClass | undefined {
   const { exploration, ends } = ground
-  if (bottoms.length !== 1) return undefined
   const { componentOf } = listedClasses(exploration.heads)
   const sizes = new Map<number, number>()
-  for (const k of bottoms[0]) sizes.set(componentOf[k], (sizes.get(componentOf[k]) ?? 0) + 1)
+  for (const k of bottom) sizes.set(componentOf[k], (sizes.get(componentOf[k]) ?? 0) + 1)
   const [largest] = [...sizes].sort((a, b) => b[1] - a[1])[0] ?? []
   if (largest === undefined) return undefined
   const members = [...exploration.states.keys()].filter((k) => componentOf[k] === largest)
@@ -35,9 +36,11 @@ export function infiniteClass(
   const leaks = members.some(
     (k) => !nearTop(k) && exploration.heads[k].some((head) => !own.has(head) && !nearTop(head)),
   )
-  const climbs = ends.some(({ end, top, window }) =>
-    members.some((k) => countOf(end, exploration.states[k]) > top - 3 * window),
-  )
+  // It spans the listing on some end: many classes, one behind the other, are no closed class.
+  const climbs = ends.some(({ end, top, window }) => {
+    const counts = members.map((k) => countOf(end, exploration.states[k]))
+    return Math.max(...counts) > top - 3 * window && Math.min(...counts) < end.level + window
+  })
   if (leaks || !climbs) return undefined
   return { members: own, period: model.time === 'continuous' ? 1 : endlessPeriod(ground, members) }
 }

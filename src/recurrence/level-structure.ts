@@ -1,11 +1,10 @@
 import type { VariablesModel } from '../model/model.js'
 import { add, type Fraction, toNumber, zero } from '../numbers/fraction.js'
 import type { BirthDeath, CountableStructure, LevelStructure, RateArc, RateMatrix } from './classification.js'
-import { countOf, type Ground, type MetEnd } from './end-pattern.js'
+import { countOf, type Ground, type MetClass, type MetEnd } from './end-pattern.js'
 import { keyOf } from './exploration.js'
 import type { InfiniteClass } from './infinite-class.js'
-import type { MetClass } from './one-variable.js'
-import { addRationals, rationalFunction, valueOf } from './rational.js'
+import { addRationals, constantIn, rationalFunction } from './rational.js'
 
 /** The form in which the infinite class can be solved; undefined where none of the forms fits. */
 export function structureOfEnds(
@@ -69,7 +68,7 @@ function levelsOf(model: VariablesModel, ground: Ground, infinite: InfiniteClass
     if (phase === undefined) return undefined
     const count = countOf(at.end, state)
     for (const { to, jump, rate } of at.end.arcs[phase]) {
-      const value = valueOf(rate)
+      const value = constantIn(rate)
       if (to === undefined || value === undefined) return undefined
       const target = [...at.end.phases[to].values]
       const reached = count + jump

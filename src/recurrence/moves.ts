@@ -3,6 +3,7 @@ import { add, equal, type Fraction, fraction, isInteger, one, toNumber, zero } f
 import { constantPolynomial, type Polynomial, scalePolynomial, symbol } from './polynomial.js'
 import {
   addRationals,
+  constantIn,
   divideRationals,
   evaluateRational,
   NotFollowed,
@@ -10,7 +11,6 @@ import {
   rationalOf,
   rationalSign,
   subtractRationals,
-  valueOf,
 } from './rational.js'
 import { bodyOf, type Expression, elementOf, holds, type Reading, type Rule, read } from './reading.js'
 
@@ -96,7 +96,7 @@ export function movesAt(model: VariablesModel, copies: readonly Copy[], place: P
     moves.push({ label, rate, ...after })
   }
   if (model.time === 'discrete' && bodyOf(model).remainder === 'refuse') {
-    const sum = valueOf(total)
+    const sum = constantIn(total)
     if (sum === undefined || Math.abs(toNumber(sum) - 1) > 1e-9) {
       throw new NotFollowed('the probabilities do not sum to 1 far out')
     }
@@ -120,14 +120,14 @@ function targetOf(rule: Rule, reading: Reading, place: Place): Pick<FarMove, 'ju
     const next = read(value, reading)
     const k = place.counts.indexOf(element)
     if (k === -1) {
-      values[element] = wholeNumber(valueOf(next), variable)
+      values[element] = wholeNumber(constantIn(next), variable)
       continue
     }
-    if (valueOf(next) !== undefined) {
+    if (constantIn(next) !== undefined) {
       resets = true // to a value: how far it falls depends on where it is
       continue
     }
-    const gain = valueOf(subtractRationals(next, reading.elements[element]))
+    const gain = constantIn(subtractRationals(next, reading.elements[element]))
     if (gain === undefined) throw new NotFollowed(`"${variable}" moves by an amount that grows with the state`)
     jump[k] = wholeNumber(gain, variable) * place.outward[k]
   }

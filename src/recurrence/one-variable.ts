@@ -1,20 +1,13 @@
 import type { VariablesModel } from '../model/model.js'
 import type { Classification, CountableClass, Drift } from './classification.js'
 import { climbRoom, type EndClass } from './end-class.js'
-import { countOf, type Ground, groundOf, type MetEnd } from './end-pattern.js'
-import type { Exploration } from './exploration.js'
-import { reaching } from './exploration.js'
+import { countOf, type Ground, groundOf, type MetClass } from './end-pattern.js'
+import { type Exploration, reaching } from './exploration.js'
 import { growthOf } from './growth.js'
 import { infiniteClass } from './infinite-class.js'
 import { structureOfEnds } from './level-structure.js'
 import type { Copy } from './moves.js'
 import { listedClasses, periodWithin } from './period-of-class.js'
-
-/** A class of phases that is truly met far out, on its end. */
-export interface MetClass {
-  readonly at: MetEnd
-  readonly own: EndClass
-}
 
 /** What is decided before periods, predictions and structures are added. */
 interface Decision {
@@ -38,18 +31,28 @@ export function classifyOneVariable(
 ): Classification {
   const ground = groundOf(model, copies, element, directions, sample)
   const met = metClasses(ground)
-  const graph = graphOf(ground)
+  const graph = graphOf(ground, met)
   const decision = decide(ground, met, graph)
   const decisive = decisiveClasses(met, decision)
   const theorem = [...new Set(decisive.map(({ own }) => own.theorem).filter((each) => each !== ''))].join('; ')
   const explosive = decision.recurrence !== 'undetermined' && met.some(({ own }) => own.explosive === true)
-  const infinite = infiniteClass(model, ground, graph.bottoms)
+  const endless = graph.bottoms.filter(({ beyond }) => beyond.length > 0)
+  const infinite = endless.length === 1 ? infiniteClass(model, ground, endless[0].members) : undefined
   const closedClasses: CountableClass[] = [
-    ...graph.finiteBottoms.map((members) => ({
-      size: members.length,
-      period: model.time === 'continuous' ? 1 : periodWithin(ground.exploration, members).period,
-    })),
+    ...graph.bottoms.flatMap(({ members, beyond }) =>
+      beyond.length > 0
+        ? []
+        : [
+            {
+              size: members.length,
+              period: model.time === 'continuous' ? 1 : periodWithin(ground.exploration, members).period,
+            },
+          ],
+    ),
     ...(infinite === undefined ? [] : [{ size: null, period: infinite.period }]),
+    ...(endless.length > 1 && decision.recurrence !== 'transient'
+      ? endless.map(() => ({ size: null, period: model.time === 'continuous' ? 1 : null }))
+      : []),
   ]
   const structure =
     decision.recurrence === 'positive recurrent' && infinite !== undefined && closedClasses.length === 1
@@ -109,122 +112,149 @@ function decisiveClasses(met: readonly MetClass[], { recurrence }: Decision): re
   return own.length === 0 ? met : own
 }
 
-export interface OverGraph {
-  /** Closed classes that are finite and wholly listed. */
-  readonly finiteBottoms: readonly (readonly number[])[]
-  /** Listed states of those that go on without end. */
-  readonly bottoms: readonly (readonly number[])[]
+interface Bottom {
+  /** Listed states of it. */
+  readonly members: readonly number[]
+  /** Classes of phases that it may visit beyond the listing; none where it is finite. */
+  readonly beyond: readonly MetClass[]
+}
+
+interface OverGraph {
+  /** Closed classes. */
+  readonly bottoms: readonly Bottom[]
   /** Listed states below all levels. */
   readonly middle: readonly number[]
 }
 
 /**
- * Bottom classes of the listed states, where all that lies beyond the listing on one end is one vertex that may lead
- * anywhere near the top: it shows more ways than there are, so that what it calls closed is closed.
+ * Closed classes of the listed states, where all that lies beyond the listing in one class of phases is one vertex that
+ * may lead anywhere near the top in that class: it shows more ways than there are, so that what it calls closed is closed.
  */
-function graphOf({ exploration, ends }: Ground): OverGraph {
+function graphOf({ exploration, ends }: Ground, met: readonly MetClass[]): OverGraph {
   const size = exploration.states.length
   const heads: number[][] = exploration.heads.map((row) => [...row])
-  ends.forEach(({ end, top, window }, k) => {
-    const beyond = size + k
-    const ways: number[] = []
+  const vertexOf = ends.map((at) => {
+    const own = new Map<number, number>()
+    met.forEach((each, k) => {
+      if (each.at === at) for (const phase of each.own.members) own.set(phase, size + k)
+    })
+    return own
+  })
+  for (let k = 0; k < met.length; k++) heads.push([])
+  ends.forEach((at, e) => {
+    const { end, top, window, phaseOf } = at
     exploration.states.forEach((state, index) => {
       const count = countOf(end, state)
-      if (count > top) heads[index].push(beyond)
-      if (count > top - window) ways.push(index)
+      if (count <= top - window) return
+      const vertex = vertexOf[e].get(phaseOf(state) ?? -1)
+      if (vertex === undefined) return
+      if (count > top) heads[index].push(vertex)
+      else heads[vertex].push(index)
     })
-    heads.push(ways)
-    for (const row of end.arcs)
-      if (row.some(({ to }) => to === undefined)) heads[beyond].push(...resetTargets(exploration, end.element))
+  })
+  met.forEach(({ at, own }, k) => {
+    const vertices = vertexOf[ends.indexOf(at)]
+    for (const { to } of own.members.flatMap((phase) => at.end.arcs[phase])) {
+      // A reset may lead to any listed state.
+      if (to === undefined) heads[size + k].push(...exploration.states.keys())
+      else heads[size + k].push(vertices.get(to) ?? size + k)
+    }
   })
   const { componentOf, count } = listedClasses(heads)
   const open = new Uint8Array(count)
   heads.forEach((row, k) => {
     for (const head of row) if (componentOf[head] !== componentOf[k]) open[componentOf[k]] = 1
   })
-  const members = new Map<number, number[]>()
-  for (let k = 0; k < size + ends.length; k++) {
+  const closed = new Map<number, number[]>()
+  for (let k = 0; k < heads.length; k++) {
     const own = componentOf[k]
-    if (open[own] === 0) members.set(own, [...(members.get(own) ?? []), k])
+    if (open[own] === 0) closed.set(own, [...(closed.get(own) ?? []), k])
   }
-  const finiteBottoms: number[][] = []
-  const bottoms: number[][] = []
-  for (const own of members.values()) {
-    if (own.some((k) => k >= size)) bottoms.push(own.filter((k) => k < size))
-    else finiteBottoms.push(own)
-  }
+  const bottoms = [...closed.values()].map((all) => ({
+    members: all.filter((k) => k < size),
+    beyond: all.filter((k) => k >= size).map((k) => met[k - size]),
+  }))
   const middle = exploration.states.flatMap((state, k) =>
     ends.every(({ end }) => countOf(end, state) < end.level) ? [k] : [],
   )
-  return { finiteBottoms, bottoms, middle }
+  return { bottoms, middle }
 }
 
-/** A reset leads from the top where it leads from the states listed: they stand in their own rows; coarsely, anywhere. */
-const resetTargets = (exploration: Exploration, _element: number): number[] => [...exploration.states.keys()]
-
-function decide(ground: Ground, met: readonly MetClass[], graph: OverGraph): Decision {
-  const { exploration } = ground
-  const { finiteBottoms, bottoms, middle } = graph
+function decide({ exploration }: Ground, met: readonly MetClass[], { bottoms, middle }: OverGraph): Decision {
   const open = (says: string): Decision => ({ recurrence: 'undetermined', grade: 'open', says })
   const unknown = met.find(({ own }) => own.fate === 'unknown')
   if (unknown !== undefined) return open(`no theorem here decides it: ${unknown.own.checked.join(', ')}`)
-  const climbing = (fate: EndClass['fate']) => {
+  // Listed states from which the process can, by listed ways, come so far out in such a class that it can climb on.
+  const climbing = (fate: EndClass['fate']): Uint8Array => {
     const chosen = met.filter(({ own }) => own.closed && own.fate === fate)
     return reaching(exploration, (k) => {
       const state = exploration.states[k]
       return chosen.some(({ at, own }) => {
-        const count = countOf(at.end, state)
-        if (count < at.end.level + climbRoom(at.end, own)) return false
+        if (countOf(at.end, state) < at.end.level + climbRoom(at.end, own)) return false
         const phase = at.phaseOf(state)
         return phase !== undefined && own.members.includes(phase)
       })
     })
   }
-  const has = (fate: EndClass['fate']): boolean => met.some(({ own }) => own.closed && own.fate === fate)
-  const name = 'the model'
-  if (has('escapes')) {
-    const escapes = climbing('escapes')
-    if (escapes[0] === 0) return open('it is not settled whether the part that drifts away is reached')
-    if (middle.every((k) => escapes[k] === 1)) {
-      return {
-        recurrence: 'transient',
-        grade: 'proved',
-        says: `from every state ${name} drifts away for good with positive probability, so it surely does in the end`,
-      }
+  const visits = ({ beyond }: Bottom, fate: EndClass['fate']): boolean =>
+    beyond.some(({ own }) => own.closed && own.fate === fate)
+  const below = new Set(middle)
+  const allReach = (bottom: Bottom, marked: Uint8Array): boolean =>
+    bottom.members.every((k) => !below.has(k) || marked[k] === 1)
+  const steady = bottoms.filter((each) => !visits(each, 'escapes') && !visits(each, 'late'))
+  const late = bottoms.filter((each) => !visits(each, 'escapes') && visits(each, 'late'))
+  const away = bottoms.filter((each) => visits(each, 'escapes'))
+  const finite = steady.every(({ beyond }) => beyond.length === 0)
+  if (late.length > 0) {
+    const marked = climbing('late')
+    if (!late.every((each) => each.members.some((k) => below.has(k)) && allReach(each, marked))) {
+      return open('it is not settled whether every return takes infinite mean time')
     }
-    if (finiteBottoms.length > 0) {
+  }
+  if (met.some(({ own }) => own.closed && own.fate === 'escapes')) {
+    const marked = climbing('escapes')
+    if (marked[0] === 0) return open('it is not settled whether the part that drifts away is reached')
+    if (steady.length > 0) {
       return {
         recurrence: 'mixed',
         grade: 'proved',
-        says: `${name} either drifts away for good or settles in a finite closed class, each with positive probability`,
+        says: `the model either drifts away for good or settles in a ${finite ? 'finite' : 'positive recurrent'} closed class, each with positive probability`,
       }
     }
-    return open('some states lead to the part that drifts away, others do not')
+    if (!away.every((each) => allReach(each, marked)))
+      return open('some states lead to the part that drifts away, others may not')
+    if (late.length > 0) {
+      return {
+        ...open('no steady state: the model either drifts away for good or keeps coming back in infinite mean time'),
+        noSteadyState: true,
+      }
+    }
+    return {
+      recurrence: 'transient',
+      grade: 'proved',
+      says: 'from every state the model drifts away for good with positive probability, so it surely does in the end',
+    }
   }
-  const settles: Decision = {
-    recurrence: 'positive recurrent',
-    grade: 'proved',
-    says: `from far out ${name} comes back in finite mean time to finitely many states`,
+  if (late.length === 0) {
+    const late = met.some(({ own }) => own.closed && own.fate === 'late')
+    return {
+      recurrence: 'positive recurrent',
+      grade: 'proved',
+      says: late
+        ? 'the model surely comes back from far out, and ends in a closed class that has a steady state'
+        : 'from far out the model comes back in finite mean time to finitely many states',
+    }
   }
-  if (!has('late')) return settles
-  if (bottoms.length === 0) {
-    return { ...settles, says: `${name} surely comes back from far out, and ends in a finite closed class` }
-  }
-  const late = climbing('late')
-  const inBottom = new Set(bottoms.flat())
-  const lower = middle.filter((k) => inBottom.has(k))
-  if (lower.length === 0 || lower.some((k) => late[k] === 0))
-    return open('it is not settled whether every return takes infinite mean time')
-  if (finiteBottoms.length > 0) {
+  if (steady.length > 0) {
     return {
       recurrence: 'mixed',
       grade: 'proved',
-      says: `${name} either settles in a finite closed class or keeps coming back in infinite mean time, each with positive probability`,
+      says: `the model either settles in a ${finite ? 'finite' : 'positive recurrent'} closed class or keeps coming back in infinite mean time, each with positive probability`,
     }
   }
   return {
     recurrence: 'null recurrent',
     grade: 'proved',
-    says: `${name} surely comes back, but the mean time until it does is infinite`,
+    says: 'the model surely comes back, but the mean time until it does is infinite',
   }
 }

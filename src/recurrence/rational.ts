@@ -34,7 +34,7 @@ export const rationalOf = (value: Fraction, symbols: number): Rational => ({
 })
 
 /** The value where it doesn't depend on any count. */
-export function valueOf(a: Rational): Fraction | undefined {
+export function constantIn(a: Rational): Fraction | undefined {
   const bottom = constantOf(a.bottom)
   if (bottom === undefined) return a.top.size === 0 ? zero : ratioOf(a)
   const top = constantOf(a.top)
@@ -74,7 +74,7 @@ export function divideRationals(a: Rational, b: Rational): Rational {
 export function powerOfRational(a: Rational, exponent: Fraction, symbols: number): Rational {
   if (!isInteger(exponent)) throw new NotFollowed('a power has a broken exponent')
   const times = Number(exponent.numerator)
-  const constant = valueOf(a)
+  const constant = constantIn(a)
   if (constant !== undefined) {
     if (Math.abs(times) > 4096) throw new NotFollowed('a power is too high')
     if (constant.numerator === 0n && times < 0) throw new NotFollowed('something is divided by 0')
@@ -94,7 +94,7 @@ function tidy(a: Rational): Rational {
     const [key] = a.bottom.keys()
     return limited({ top: scalePolynomial(a.top, divide(one, bottom)), bottom: new Map([[key, one]]) })
   }
-  const value = valueOf(a)
+  const value = constantIn(a)
   if (value === undefined) return limited(a)
   const [key] = a.bottom.keys()
   const symbols = key.split(',').length

@@ -14,6 +14,7 @@ import {
 import { addPolynomials, coefficientsOf, constantPolynomial, degreeOf, polynomialOf, symbolsIn } from './polynomial.js'
 import {
   addRationals,
+  constantIn,
   divideRationals,
   expansionOf,
   multiplyRationals,
@@ -25,7 +26,6 @@ import {
   rationalOf,
   rationalSign,
   subtractRationals,
-  valueOf,
 } from './rational.js'
 
 export type Body = Extract<VariablesModel['scenario']['body'], { kind: 'variables' }>
@@ -137,7 +137,7 @@ function signOf(value: Rational, reading: Reading): -1 | 0 | 1 {
 
 /** A value that must not depend on any count. */
 export function constantRead(expression: Expression, reading: Reading, what: string): Fraction {
-  const value = valueOf(read(expression, reading))
+  const value = constantIn(read(expression, reading))
   if (value === undefined) throw new NotFollowed(`${what} depends on an unbounded variable`)
   return value
 }
@@ -190,13 +190,13 @@ function arithmetic(expression: Kind<'arithmetic'>, reading: Reading): Rational 
       reachNonZero(right, reading)
       return divideRationals(left, right)
     case '^': {
-      const exponent = valueOf(right)
+      const exponent = constantIn(right)
       if (exponent === undefined) throw new NotFollowed('a power has an unbounded variable in its exponent')
       return powerOfRational(left, exponent, reading.symbols)
     }
     case '%': {
       // a - b·floor(a/b): the divisor's sign.
-      const divisor = valueOf(right)
+      const divisor = constantIn(right)
       if (divisor === undefined || divisor.numerator === 0n) {
         throw new NotFollowed('a remainder has an unbounded divisor or the divisor 0')
       }
@@ -208,7 +208,7 @@ function arithmetic(expression: Kind<'arithmetic'>, reading: Reading): Rational 
 
 /** The quotient is as it was read only where its divisor is not 0. */
 function reachNonZero(value: Rational, reading: Reading): void {
-  if (valueOf(value) === undefined) signOf(value, reading)
+  if (constantIn(value) === undefined) signOf(value, reading)
 }
 
 function called(expression: Kind<'call'>, reading: Reading): Rational {
@@ -236,7 +236,7 @@ function called(expression: Kind<'call'>, reading: Reading): Rational {
  */
 function floorOf(value: Rational, reading: Reading): Rational {
   const { symbols } = reading
-  const constant = valueOf(value)
+  const constant = constantIn(value)
   if (constant !== undefined) return rationalOf(fraction(floor(constant)), symbols)
   if (symbols !== 1) {
     if (![...symbolsIn(value.top), ...symbolsIn(value.bottom)].length)
@@ -306,7 +306,7 @@ function folded(expression: Kind<'fold'>, reading: Reading): Rational {
 
 /** Slope of a count in a value that is linear in it with a whole slope; undefined otherwise. */
 export function wholeSlope(value: Rational): bigint | undefined {
-  if (valueOf(value) !== undefined) return 0n
+  if (constantIn(value) !== undefined) return 0n
   const bottom = coefficientsOf(value.bottom)
   const top = coefficientsOf(value.top)
   if (bottom.length !== 1 || top.length > 2) return undefined
