@@ -62,7 +62,8 @@ export function tolerance(text: string): { kind: 'absolute' | 'relative'; value:
 }
 
 /** A seed is a phrase: any text but none at all. */
-export const seed = (text: string): string => (text.trim() === '' ? refuse('A phrase of at least one character.') : text)
+export const seed = (text: string): string =>
+  text.trim() === '' ? refuse('A phrase of at least one character.') : text
 
 /** `name=value`, gathered over all its uses; the scenario reader judges name and value. */
 export function setConstant(text: string, before: ReadonlyMap<string, string> | undefined): Map<string, string> {

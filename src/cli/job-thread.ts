@@ -1,3 +1,4 @@
+import { getHeapStatistics } from 'node:v8'
 import { Worker } from 'node:worker_threads'
 import type { Progress } from '../jobs/options.js'
 import type { Message, Order } from './job-worker.js'
@@ -12,7 +13,10 @@ export interface JobThread {
 }
 
 export function startJobThread(): JobThread {
-  const worker = new Worker(new URL('./job-worker.js', import.meta.url))
+  // As much heap as the main thread would have had: NODE_OPTIONS=--max-old-space-size reaches the job.
+  const worker = new Worker(new URL('./job-worker.js', import.meta.url), {
+    resourceLimits: { maxOldGenerationSizeMb: Math.floor(getHeapStatistics().heap_size_limit / 2 ** 20) },
+  })
   let stopped = false
   return {
     run: (order, onProgress) =>
@@ -28,7 +32,11 @@ export function startJobThread(): JobThread {
         })
         worker.on('error', (error) => end(ofThread(error)))
         worker.on('exit', () =>
-          end(stopped ? { kind: 'interrupted' } : { kind: 'defect', message: 'The job ended without a result', stack: '' }),
+          end(
+            stopped
+              ? { kind: 'interrupted' }
+              : { kind: 'defect', message: 'The job ended without a result', stack: '' },
+          ),
         )
         worker.postMessage(order)
       }),

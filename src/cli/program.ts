@@ -50,7 +50,7 @@ const commands: readonly CommandText[] = [
     runs: false,
     ends: `0 decided · 1 "expect" is contradicted · 3 the class stays open
              2 the input can't be used · 4 a limit was reached · 130 interrupted`,
-    example: 'stillmark classify scenarios/job-shop-line.yaml',
+    example: 'stillmark classify scenarios/shift-rota.yaml',
   },
   {
     name: 'solve',
@@ -59,7 +59,7 @@ const commands: readonly CommandText[] = [
     runs: false,
     ends: `0 solved · 1 no steady state, or "expect" is contradicted · 3 the class stays open
              2 the input can't be used · 4 a limit was reached · 130 interrupted`,
-    example: 'stillmark solve scenarios/tool-crib.yaml --states',
+    example: 'stillmark solve scenarios/parcel-lockers.yaml --states',
   },
   {
     name: 'simulate',
@@ -68,7 +68,7 @@ const commands: readonly CommandText[] = [
     runs: true,
     ends: `0 simulated · 3 it is open whether there is a long-run answer
              2 the input can't be used · 4 a limit was reached · 130 interrupted`,
-    example: 'stillmark simulate scenarios/tool-crib.yaml --seed monday --replications 32',
+    example: 'stillmark simulate scenarios/parcel-lockers.yaml --seed monday --replications 32',
   },
 ]
 
@@ -80,7 +80,7 @@ const limitsGroup = 'Limits:'
 function addOptions(command: Command, { runs, name }: CommandText): void {
   const add = (group: string, flags: string, text: string, parser?: (text: string, before: never) => unknown) => {
     const option = new Option(flags, text).helpGroup(group)
-    if (parser !== undefined) option.argParser(parser)
+    if (parser !== undefined) option.argParser(parser as (text: string, before: unknown) => never)
     // Common options are taken by every command; where they bear on nothing they are not advertised.
     if (group === runGroup && !runs) option.hideHelp()
     command.addOption(option)

@@ -1,39 +1,84 @@
-import { mkdir, rename, rm, writeFile } from 'node:fs/promises'
+import { randomBytes } from 'node:crypto'
+import { mkdir, open, rename, rm } from 'node:fs/promises'
 import { basename, join } from 'node:path'
 import { StillmarkError } from '../errors/stillmark-error.js'
-import type { JobResult } from '../jobs/job-result.js'
-import { toJson } from '../report/json.js'
-import { toMarkdown, type Versions } from '../report/markdown.js'
 
-/** Writes NAME.md and NAME.json into a folder, each whole or not at all. @returns their paths */
-export async function writeReport(folder: string, result: JobResult, versions: Versions): Promise<readonly string[]> {
-  const name = basename(result.document.scenario.file).replace(/\.(ya?ml|json)$/i, '')
-  const contents = [
-    [join(folder, `${name}.md`), toMarkdown(result, versions)],
-    [join(folder, `${name}.json`), `${toJson(result.document, true)}\n`],
-  ] as const
-  try {
-    await mkdir(folder, { recursive: true })
-    for (const [path, content] of contents) await writeWhole(path, content)
-  } catch (error) {
-    throw new StillmarkError({
-      code: 'report-not-written',
-      where: { file: folder },
-      what: `The report can't be written (${(error as NodeJS.ErrnoException).code ?? 'unknown reason'}).`,
-      next: 'Check that the folder can be written to and that the disk has room.',
-    })
-  }
-  return contents.map(([path]) => path)
+/** What a report's files are called: the scenario's own name, with a number where several share it. */
+export function reportNames(files: readonly string[]): string[] {
+  const taken = new Set<string>()
+  return files.map((file) => {
+    const stem = basename(file).replace(/\.(ya?ml|json)$/i, '') || 'report'
+    let name = stem
+    for (let n = 2; taken.has(name.toLowerCase()); n++) name = `${stem}-${n}`
+    taken.add(name.toLowerCase())
+    return name
+  })
 }
 
-/** Under another name first: a reader never meets half a file. */
-async function writeWhole(path: string, content: string): Promise<void> {
-  const part = `${path}.${process.pid}.tmp`
+/** Makes the folder before anything is run: a report that can't be written should not cost a run. */
+export async function prepareFolder(folder: string): Promise<void> {
   try {
-    await writeFile(part, content, { flush: true })
-    await rename(part, path)
+    await mkdir(folder, { recursive: true })
+    await write(folder, [])
   } catch (error) {
-    await rm(part, { force: true })
+    throw notWritten(folder, error)
+  }
+}
+
+/**
+ * Writes files whole or not at all: each goes to a temporary name in the same folder, and only when all of them are on
+ * the disk are they given their own names.
+ *
+ * @throws StillmarkError report-not-written
+ */
+export async function writeReport(
+  folder: string,
+  files: readonly (readonly [name: string, text: string])[],
+): Promise<void> {
+  try {
+    await write(folder, files)
+  } catch (error) {
+    throw notWritten(folder, error)
+  }
+}
+
+async function write(folder: string, files: readonly (readonly [string, string])[]): Promise<void> {
+  const mark = randomBytes(6).toString('hex')
+  const temporary = files.map(([name]) => join(folder, `.${name}.${mark}`))
+  try {
+    for (const [i, [, text]] of files.entries()) {
+      const handle = await open(temporary[i], 'wx')
+      try {
+        await handle.writeFile(text)
+        await handle.sync()
+      } finally {
+        await handle.close()
+      }
+    }
+    for (const [i, [name]] of files.entries()) await rename(temporary[i], join(folder, name))
+  } catch (error) {
+    await Promise.all(temporary.map((path) => rm(path, { force: true })))
     throw error
   }
+}
+
+const reasons: Readonly<Record<string, string>> = {
+  EACCES: 'it may not be written to',
+  EPERM: 'it may not be written to',
+  EROFS: 'the disk is read-only',
+  ENOSPC: 'the disk is full',
+  EDQUOT: 'the disk quota is used up',
+  EEXIST: 'there is a file of that name',
+  ENOTDIR: 'a part of the path is a file',
+  EISDIR: 'a folder stands where a file should go',
+  ENAMETOOLONG: 'the name is too long',
+}
+
+function notWritten(folder: string, error: unknown): StillmarkError {
+  const { code = 'unknown' } = error as NodeJS.ErrnoException
+  return new StillmarkError({
+    code: 'report-not-written',
+    what: `The report can't be written to "${folder}": ${reasons[code] ?? code}.`,
+    next: 'Name another folder with --report.',
+  })
 }
