@@ -65,9 +65,7 @@ function decide(model: VariablesModel): Classification {
                 ...(single?.up ? [1 as const] : []),
                 ...(single?.down ? [-1 as const] : []),
               ]
-              return directions.length === 0
-                ? undefined
-                : classifyOneVariable(model, copies, elements[0], directions, sample)
+              return directions.length === 0 ? undefined : classifyOneVariable(model, copies, elements[0], directions)
             },
           ]
         : [

@@ -46,10 +46,9 @@ export function groundOf(
   copies: readonly Copy[],
   element: number,
   directions: readonly (1 | -1)[],
-  sample: Exploration,
 ): Ground {
   const least = directions.length > 1 ? 1 : 0
-  const settled = directions.map((outward) => settledEnd(model, copies, element, outward, sample, least, directions))
+  const settled = directions.map((outward) => settledEnd(model, copies, element, outward, least, directions))
   const classes = settled.map((end) => endClasses(end, model.time))
   const jumps = settled.map((end) => Math.max(1, ...end.arcs.flat().map(({ jump }) => Math.abs(jump))))
   const phases = Math.max(...settled.map((end) => end.phases.length / end.modulus))
@@ -76,41 +75,44 @@ export function groundOf(
   throw new NotFollowed('what can be met far out does not repeat itself')
 }
 
+/** Where the reading of an end begins; further out where something nearer can't be followed. */
+const firstGuesses: readonly number[] = [0, 16, 128, 1024]
+
+/** How far beyond the level states are listed to see which phases are met. */
+const seedRange = 16
+
 function settledEnd(
   model: VariablesModel,
   copies: readonly Copy[],
   element: number,
   outward: 1 | -1,
-  sample: Exploration,
   least: number,
   directions: readonly (1 | -1)[],
 ): End {
-  const counts = sample.states.map((state) => state[element] * outward)
-  const seedsFrom = (states: Exploration['states'], from: number) =>
-    states.filter((state) => state[element] * outward >= from)
-  let guess = Math.max(least, Math.floor(Math.max(...counts) / 2))
-  let end = readEnd(model, copies, element, outward, seedsFrom(sample.states, guess))
-  let known = sample
-  for (let attempt = 0; end.level > guess; attempt++) {
-    if (attempt === 6) throw new NotFollowed('the level beyond which the moves stay the same keeps moving')
-    guess = end.level
-    known = exploreWithin(model, (state) => directions.every((d) => state[element] * d <= guess + 4), mostStates)
-    const seeds = seedsFrom(known.states, guess)
-    if (seeds.length === 0) throw new NotFollowed('the level beyond which the moves stay the same is not reached')
-    end = readEnd(model, copies, element, outward, seeds)
-  }
-  // The level that was read may be far lower than the guess: then start there, if all phases met there agree.
-  const lower = Math.max(least, end.level)
-  if (lower < guess) {
-    const near = exploreWithin(model, (state) => directions.every((d) => state[element] * d <= guess + 4), mostStates)
+  let failure: NotFollowed | undefined
+  for (const first of firstGuesses) {
     try {
-      const tight = readEnd(model, copies, element, outward, seedsFrom(near.states, lower))
-      if (tight.level <= lower) return { ...tight, level: lower }
+      let guess = Math.max(least, first)
+      for (let attempt = 0; attempt < 8; attempt++) {
+        const known = exploreWithin(
+          model,
+          (state) => directions.every((each) => state[element] * each <= guess + seedRange),
+          mostStates,
+        )
+        if (!known.complete) throw new NotFollowed('too many states have to be listed')
+        const seeds = known.states.filter((state) => state[element] * outward >= guess)
+        if (seeds.length === 0) throw new NotFollowed('the level beyond which the moves stay the same is not reached')
+        const end = readEnd(model, copies, element, outward, seeds)
+        if (end.level <= guess) return { ...end, level: guess }
+        guess = end.level
+      }
+      throw new NotFollowed('the level beyond which the moves stay the same keeps moving')
     } catch (error) {
       if (!(error instanceof NotFollowed)) throw error
+      failure = error
     }
   }
-  return { ...end, level: guess }
+  throw failure
 }
 
 function metEnd(
@@ -165,10 +167,10 @@ const probedPhases = 40
 /** Holds what was read against the model's own moves: at the level, beyond it, and far out. @throws NotFollowed */
 function probe(model: VariablesModel, ends: readonly MetEnd[]): void {
   for (const { end, met, top } of ends) {
-    const keys = [...met]
-    const step = Math.max(1, Math.floor(keys.length / probedPhases))
-    for (let k = 0; k < keys.length; k += step) {
-      const phase = Number(keys[k].split('|')[0])
+    const phases = [...new Set([...met].map((key) => Number(key.split('|')[0])))]
+    const step = Math.max(1, Math.floor(phases.length / probedPhases))
+    for (let k = 0; k < phases.length; k += step) {
+      const phase = phases[k]
       const place = end.phases[phase]
       for (const from of [end.level, end.level + 1, top, 2 * top + 17, 1000 + 7 * k, 1_000_003 + 37 * k]) {
         const count = from + remainder(place.residue - from, end.modulus)

@@ -2,7 +2,7 @@ import type { VariablesModel } from '../model/model.js'
 import type { Classification, CountableClass, Drift } from './classification.js'
 import { climbRoom, type EndClass } from './end-class.js'
 import { countOf, type Ground, groundOf, type MetClass } from './end-pattern.js'
-import { type Exploration, reaching } from './exploration.js'
+import { reaching } from './exploration.js'
 import { growthOf } from './growth.js'
 import { infiniteClass } from './infinite-class.js'
 import { structureOfEnds } from './level-structure.js'
@@ -27,9 +27,8 @@ export function classifyOneVariable(
   copies: readonly Copy[],
   element: number,
   directions: readonly (1 | -1)[],
-  sample: Exploration,
 ): Classification {
-  const ground = groundOf(model, copies, element, directions, sample)
+  const ground = groundOf(model, copies, element, directions)
   const met = metClasses(ground)
   const graph = graphOf(ground, met)
   const decision = decide(ground, met, graph)
