@@ -52,9 +52,12 @@ export function groundOf(
   const classes = settled.map((end) => endClasses(end, model.time))
   const jumps = settled.map((end) => Math.max(1, ...end.arcs.flat().map(({ jump }) => Math.abs(jump))))
   const phases = Math.max(...settled.map((end) => end.phases.length / end.modulus))
+  // States below the level may jump far beyond it: the listing goes on to where they land.
+  const low = exploreWithin(model, (state) => settled.every((end) => countOf(end, state) <= end.level), mostStates)
+  const reached = settled.map((end) => low.states.reduce((most, state) => Math.max(most, countOf(end, state)), 0))
   let tops = settled.map((end, k) => {
     const room = Math.max(...classes[k].map((own) => climbRoom(end, own)))
-    const wanted = end.level + room + 8 * (jumps[k] + end.modulus) + 8
+    const wanted = Math.max(end.level + room, reached[k]) + 8 * (jumps[k] + end.modulus) + 8
     const affordable = Math.floor(mostStates / (settled.length * Math.max(1, phases)))
     return Math.max(Math.min(wanted, affordable), end.level + 6 * (jumps[k] + end.modulus))
   })

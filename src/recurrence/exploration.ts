@@ -25,13 +25,14 @@ export function exploreWithin(
   inside: (state: readonly number[]) => boolean,
   maxStates: number,
 ): Exploration {
+  const { width } = model
   const start = Array.from(model.start)
   const states: number[][] = [start]
   const indexOf = new Map([[keyOf(start), 0]])
   const heads: number[][] = []
   const expanded: boolean[] = []
   const stays: boolean[] = []
-  const moves = buffers(model.width)
+  const moves = buffers(width)
   let complete = true
   for (let k = 0; k < states.length; k++) {
     const here = states[k]
@@ -47,13 +48,17 @@ export function exploreWithin(
     model.expand(here, moves)
     for (let move = 0; move < moves.count; move++) {
       if (!(moves.rate[move] > 0)) continue
-      const next = Array.from(moves.next.subarray(move * model.width, (move + 1) * model.width))
-      const key = keyOf(next)
+      const { next } = moves
+      const from = move * width
+      let key = `${next[from]}`
+      for (let element = 1; element < width; element++) key += ` ${next[from + element]}`
       let index = indexOf.get(key)
       if (index === undefined) {
         index = states.length
         indexOf.set(key, index)
-        states.push(next)
+        const state: number[] = []
+        for (let element = 0; element < width; element++) state.push(next[from + element])
+        states.push(state)
       }
       if (index === k) stays[k] = true
       else if (!heads[k].includes(index)) heads[k].push(index)

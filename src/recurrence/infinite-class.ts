@@ -39,7 +39,7 @@ export function infiniteClass(
   // It spans the listing on some end: many classes, one behind the other, are no closed class.
   const climbs = ends.some(({ end, top, window }) => {
     const counts = members.map((k) => countOf(end, exploration.states[k]))
-    return Math.max(...counts) > top - 3 * window && Math.min(...counts) < end.level + window
+    return counts.some((count) => count > top - 3 * window) && counts.some((count) => count < end.level + window)
   })
   if (leaks || !climbs) return undefined
   return { members: own, period: model.time === 'continuous' ? 1 : endlessPeriod(ground, members) }

@@ -2,7 +2,7 @@ import type { VariablesModel } from '../model/model.js'
 import { add, type Fraction, toNumber, zero } from '../numbers/fraction.js'
 import type { BirthDeath, CountableStructure, LevelStructure, RateArc, RateMatrix } from './classification.js'
 import { countOf, type Ground, type MetClass, type MetEnd } from './end-pattern.js'
-import { keyOf } from './exploration.js'
+import { type Exploration, keyOf } from './exploration.js'
 import type { InfiniteClass } from './infinite-class.js'
 import { addRationals, constantIn, rationalFunction } from './rational.js'
 
@@ -34,7 +34,7 @@ function levelsOf(model: VariablesModel, ground: Ground, infinite: InfiniteClass
   const [{ end }] = ends
   const started: Started[] = []
   for (const at of ends) {
-    const base = firstLevel(at, inClass, exploration.states)
+    const base = firstLevel(at, inClass, exploration)
     if (base === undefined) return undefined
     started.push({ at, base })
   }
@@ -121,13 +121,19 @@ function levelsOf(model: VariablesModel, ground: Ground, infinite: InfiniteClass
 function firstLevel(
   { end, top, window }: MetEnd,
   inClass: (state: readonly number[]) => boolean,
-  states: readonly (readonly number[])[],
+  { states, heads }: Exploration,
 ): number | undefined {
-  const lowest = Math.min(...states.filter(inClass).map((state) => countOf(end, state)))
+  const lowest = states
+    .filter(inClass)
+    .reduce((least, state) => Math.min(least, countOf(end, state)), Number.POSITIVE_INFINITY)
   if (!Number.isFinite(lowest)) return undefined
   const from = Math.max(end.level, lowest + 1)
   // A boundary state must not jump over level 0: jumps from below the level may be longer than those beyond.
-  for (let base = from; base + 4 * window <= top; base++) {
+  const jumps = states.flatMap((state, k) =>
+    countOf(end, state) < end.level && inClass(state) ? heads[k].map((head) => countOf(end, states[head])) : [],
+  )
+  const reached = jumps.reduce((most, count) => Math.max(most, count), from)
+  for (let base = Math.max(from, reached - window + 1); base + 4 * window <= top; base++) {
     const patternAt = (first: number): string =>
       states
         .filter((state) => countOf(end, state) >= first && countOf(end, state) < first + window && inClass(state))

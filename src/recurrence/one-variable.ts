@@ -155,7 +155,7 @@ function graphOf({ exploration, ends }: Ground, met: readonly MetClass[]): OverG
     const vertices = vertexOf[ends.indexOf(at)]
     for (const { to } of own.members.flatMap((phase) => at.end.arcs[phase])) {
       // A reset may lead to any listed state.
-      if (to === undefined) heads[size + k].push(...exploration.states.keys())
+      if (to === undefined) for (let state = 0; state < size; state++) heads[size + k].push(state)
       else heads[size + k].push(vertices.get(to) ?? size + k)
     }
   })
@@ -167,7 +167,10 @@ function graphOf({ exploration, ends }: Ground, met: readonly MetClass[]): OverG
   const closed = new Map<number, number[]>()
   for (let k = 0; k < heads.length; k++) {
     const own = componentOf[k]
-    if (open[own] === 0) closed.set(own, [...(closed.get(own) ?? []), k])
+    if (open[own] !== 0) continue
+    const members = closed.get(own)
+    if (members === undefined) closed.set(own, [k])
+    else members.push(k)
   }
   const bottoms = [...closed.values()].map((all) => ({
     members: all.filter((k) => k < size),
