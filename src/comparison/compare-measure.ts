@@ -19,7 +19,12 @@ export interface Prediction {
   readonly bias?: number
   /** Integrated correlation time, in time units: observations nearer than it hang together. */
   readonly correlationTime: number
+  /** A replication lasts too few correlation times for its average to be more than a draw of the slow part. */
+  readonly slow: boolean
 }
+
+/** Correlation times that a replication should last: with fewer, its average is one draw of the slow part. */
+export const fewestCorrelationTimes = 20
 
 /** Why a comparison came out as it did; findings are made from it. */
 export type Reason =
@@ -30,6 +35,7 @@ export type Reason =
   | 'no interval'
   | 'bias left'
   | 'interval too narrow'
+  | 'slow'
   | 'same'
 
 export interface JudgedMeasure extends MeasureComparison {
@@ -89,6 +95,7 @@ export function judgeMeasure(
   if (bias !== undefined && Math.abs(difference - bias) <= halfWidth && Math.abs(bias) > allowed / 4) {
     return { ...judged, verdict: 'undecided', reason: 'bias left' }
   }
+  if (prediction?.slow) return { ...judged, verdict: 'undecided', reason: 'slow' }
   return { ...judged, verdict: 'disagrees', reason: 'off' }
 }
 

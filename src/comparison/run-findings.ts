@@ -1,4 +1,4 @@
-import type { AnyEstimate, JudgedMeasure, Prediction } from './compare-measure.js'
+import { type AnyEstimate, fewestCorrelationTimes, type JudgedMeasure, type Prediction } from './compare-measure.js'
 import { inUnits, percent, shown } from './shown-number.js'
 import type { StructureFacts } from './structure-findings.js'
 import type { Finding } from './verdict.js'
@@ -12,9 +12,6 @@ export interface RunFacts {
   /** Why the warm-up rule is not to be believed; undefined where it is, or where the length was given. */
   readonly unsettled?: string
 }
-
-/** Correlation times that a replication should last: with fewer, its average is one draw of the slow part. */
-const fewestCorrelationTimes = 20
 
 export function measureFindings(
   judged: Readonly<Record<string, JudgedMeasure>>,
@@ -31,7 +28,7 @@ export function measureFindings(
     ...biasLeft(of('bias left'), predictions, run),
     ...(run.unsettled === undefined ? [] : [unsettled(run)]),
     ...simulationOff(of('off')),
-    ...tooShort([...of('too wide'), ...of('no interval')], adjusted, run, mixture),
+    ...tooShort([...of('too wide'), ...of('no interval'), ...of('slow')], adjusted, run, mixture),
     ...harmless(of('harmless')),
   ]
 }
@@ -40,15 +37,13 @@ const list = (names: readonly string[]): string =>
   names.length < 2 ? names.join('') : `${names.slice(0, -1).join(', ')} and ${names[names.length - 1]}`
 
 function slowMixing(predictions: Readonly<Record<string, Prediction>>, run: RunFacts): Finding[] {
-  const slow = Object.entries(predictions).filter(
-    ([, { correlationTime }]) => correlationTime * fewestCorrelationTimes > run.runLength,
-  )
+  const slow = Object.entries(predictions).filter(([, each]) => each.slow)
   if (slow.length === 0) return []
   const longest = Math.max(...slow.map(([, { correlationTime }]) => correlationTime))
   return [
     {
       code: 'slow-mixing',
-      says: `The model forgets so slowly that a replication of ${inUnits(run.runLength, run.unit)} is about one observation of ${list(slow.map(([name]) => name).slice(0, 4))}.`,
+      says: `The model forgets so slowly that a replication of ${inUnits(run.runLength, run.unit)} holds few independent looks at ${list(slow.map(([name]) => name).slice(0, 4))}.`,
       evidence: `What is seen at two moments hangs together over ${inUnits(longest, run.unit)} (integrated correlation time, exact); a replication lasts ${shown(run.runLength / longest)} of these.`,
       next: `Let each replication observe at least ${fewestCorrelationTimes} of them: --run-length ${roundedUp(fewestCorrelationTimes * longest)}.`,
     },
@@ -83,7 +78,7 @@ function biasLeft(
 const unsettled = (run: RunFacts): Finding => ({
   code: 'bias-left',
   says: 'The warm-up rule found no point from which on the pilot runs have settled.',
-  evidence: `${run.unsettled}. The longest pilot tried is deleted: ${inUnits(run.warmUp, run.unit)}.`,
+  evidence: `${(run.unsettled ?? '').charAt(0).toUpperCase()}${(run.unsettled ?? '').slice(1)}. The longest pilot tried is deleted: ${inUnits(run.warmUp, run.unit)}.`,
   next: 'Give a warm-up that you can defend with --warm-up, or look whether the model settles at all.',
 })
 

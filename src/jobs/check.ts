@@ -61,7 +61,7 @@ export async function check(file: string, options: JobOptions = {}): Promise<Job
       ...detailsOf(ground.scenario, nextOf(comparison), request),
       warmUpBasis: chosen.warmUpBasis,
       runLengthBasis: chosen.runLengthBasis,
-      ...(ground.scenario.expect === undefined
+      ...(ground.scenario.expect === undefined || ground.part.recurrence === 'undetermined'
         ? {}
         : { expectationMet: ground.scenario.expect === ground.part.recurrence }),
     },

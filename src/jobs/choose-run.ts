@@ -7,6 +7,7 @@ import type { RunSettings } from '../simulation/observations.js'
 import { type PilotSeries, simulatePilot } from '../simulation/pilot.js'
 import type { ExactAnswer } from '../stationary/exact-answer.js'
 import type { Ground } from './ground.js'
+import { exactWarmUp } from './known-dynamics.js'
 import type { Progress } from './options.js'
 import { runDefaults } from './run-defaults.js'
 import type { RunRequest } from './run-request.js'
@@ -47,6 +48,21 @@ export async function chooseRun(
   let warmUpRule = 'given'
   let warmUpBasis = 'as given'
   let unsettled: string | undefined
+  const byBias = warmUpByBias(ground, exact, averages, request)
+  if (byBias !== undefined) {
+    return {
+      settings: {
+        seed,
+        replications,
+        warmUp: byBias.warmUp,
+        runLength: whole(byBias.runLength),
+        batches: batchesOf(ground, byBias.runLength, discrete),
+      },
+      warmUpRule: 'exact bias below a fortieth of the half-width',
+      warmUpBasis: byBias.basis,
+      runLengthBasis: byBias.runLengthBasis,
+    }
+  }
   if (request.warmUp === undefined || request.runLength === undefined) {
     const found = await pilotWarmUp(ground, exact, request, report)
     pilot = found.pilot
@@ -89,6 +105,44 @@ export async function chooseRun(
     runLengthBasis,
     ...(unsettled === undefined ? {} : { unsettled }),
   }
+}
+
+/**
+ * Warm-up and run length from the exact dynamics, where they are known: the two depend on one another, so the length is
+ * chosen once without and once with the warm-up. Undefined where the warm-up is given or asked of another rule.
+ */
+function warmUpByBias(
+  ground: Ground,
+  exact: ExactAnswer | undefined,
+  averages: Readonly<Record<string, TimeAverage>>,
+  request: RunRequest,
+):
+  | { readonly warmUp: number; readonly runLength: number; readonly basis: string; readonly runLengthBasis: string }
+  | undefined {
+  const { model } = ground
+  if (request.warmUp !== undefined || request.warmUpRule === 'mser' || exact === undefined) return undefined
+  const perTimeUnit = eventsPerTimeUnit(ground, exact, undefined)
+  const lengthFor = (warmUp: number) =>
+    request.runLength === undefined
+      ? chooseRunLength(needsOf(ground, exact, averages, request), {
+          replications: request.replications,
+          confidence: adjustedConfidence(request.confidence, model.measures.length),
+          eventsPerTimeUnit: perTimeUnit,
+          maxEvents: runDefaults.events,
+          warmUp,
+        })
+      : { runLength: request.runLength, basis: 'as given' }
+  const run = { replications: request.replications, confidence: request.confidence }
+  const first = model.time === 'discrete' ? 1 : pleasantAbove(1 / Math.max(perTimeUnit, 1e-300))
+  const found = exactWarmUp(ground, averages, { ...run, runLength: lengthFor(0).runLength, first })
+  if (found === undefined) return undefined
+  const { runLength, basis: runLengthBasis } = lengthFor(found.warmUp)
+  const basis =
+    found.biasPart > 0
+      ? `bias left is 1/${Math.floor(Math.min(1 / found.biasPart, 1e6)).toLocaleString('en-US')} of the half-width`
+      : 'no bias is left'
+  const warmUp = model.time === 'discrete' ? Math.ceil(found.warmUp) : found.warmUp
+  return { warmUp, runLength, basis, runLengthBasis }
 }
 
 /**
@@ -179,15 +233,15 @@ interface PilotWarmUp {
 async function pilotWarmUp(
   ground: Ground,
   exact: ExactAnswer | undefined,
-  { seed, replications, runLength, workers }: RunRequest,
+  { seed, replications, workers }: RunRequest,
   { onProgress, signal }: { readonly onProgress: (progress: Progress) => void; readonly signal: AbortSignal },
 ): Promise<PilotWarmUp> {
   const { model, finite } = ground
   const discrete = model.time === 'discrete'
   const perTimeUnit = Math.max(eventsPerTimeUnit(ground, exact, undefined), 1e-300)
   // A single long replication has no others to be averaged with: pilots always have a few.
-  const pilots = Math.max(replications, 8)
-  const longest = Math.min(runLength ?? Number.POSITIVE_INFINITY, pilotEvents / pilots / perTimeUnit)
+  const pilots = Math.min(Math.max(replications, 8), 32)
+  const longest = pilotEvents / pilots / perTimeUnit
   let length = Math.min(firstPilot / perTimeUnit, longest)
   for (;;) {
     const steps = discrete ? Math.max(1, Math.ceil(length)) : length

@@ -1,7 +1,8 @@
-import type { Prediction } from '../comparison/compare-measure.js'
+import { fewestCorrelationTimes, type Prediction } from '../comparison/compare-measure.js'
 import { type TimeAverage, timeAverage } from '../dynamics/time-average.js'
 import { transientCost, transientDistribution } from '../dynamics/transient-distribution.js'
 import { normalTailQuantile } from '../numbers/distributions.js'
+import { pleasantAbove } from '../planning/run-length.js'
 import type { ExactAnswer } from '../stationary/exact-answer.js'
 import { measureRewards } from '../stationary/measure-rewards.js'
 import type { Ground } from './ground.js'
@@ -59,7 +60,48 @@ export function predictionsOf(
         bias /= run.runLength
       }
       const halfWidth = z * Math.sqrt(varianceConstant / (run.replications * run.runLength))
-      return [name, { halfWidth, correlationTime, ...(bias === undefined ? {} : { bias }) }]
+      const slow = correlationTime * fewestCorrelationTimes > run.runLength
+      return [name, { halfWidth, correlationTime, slow, ...(bias === undefined ? {} : { bias }) }]
     }),
   )
+}
+
+/** The bias that is left may be this part at most of the half-width that the run will reach. */
+const allowedBias = 1 / 40
+
+/**
+ * The smallest warm-up of pleasant numbers after which the exact bias of every mean is below a fortieth of the half-width
+ * that the run will reach; undefined where it can't be known, or would take too long to work out.
+ */
+export function exactWarmUp(
+  { finite }: Ground,
+  averages: Readonly<Record<string, TimeAverage>>,
+  run: {
+    readonly replications: number
+    readonly runLength: number
+    readonly confidence: number
+    readonly first: number
+  },
+): { readonly warmUp: number; readonly biasPart: number } | undefined {
+  const known = Object.values(averages)
+  if (finite === undefined || known.length === 0 || finite.structure.classOf[finite.chain.start] < 0) return undefined
+  const { chain } = finite
+  const z = normalTailQuantile((1 - run.confidence) / 2)
+  let now: Float64Array = new Float64Array(chain.size)
+  now[chain.start] = 1
+  let warmUp = 0
+  for (;;) {
+    let worst = 0
+    for (const { varianceConstant, biasFrom } of known) {
+      let bias = 0
+      for (let i = 0; i < chain.size; i++) bias += now[i] * biasFrom[i]
+      const halfWidth = z * Math.sqrt(varianceConstant / (run.replications * run.runLength))
+      if (halfWidth > 0) worst = Math.max(worst, Math.abs(bias) / run.runLength / halfWidth)
+    }
+    if (worst <= allowedBias) return { warmUp, biasPart: worst }
+    const next = warmUp === 0 ? run.first : pleasantAbove(warmUp * 1.01)
+    if (transientCost(chain, next - warmUp) > mostMultiplications / 4 || next > run.runLength) return undefined
+    now = transientDistribution(chain, now, next - warmUp)
+    warmUp = next
+  }
 }

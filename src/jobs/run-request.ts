@@ -12,6 +12,8 @@ export interface RunRequest {
   readonly runLength?: number
   /** A length in time units, or undefined: by the automatic rule. */
   readonly warmUp?: number
+  /** Name of the rule that is asked for: auto, mser. */
+  readonly warmUpRule?: string
   /** Threads; they bear on no digit. */
   readonly workers?: number
 }
@@ -29,6 +31,7 @@ export function runRequest(scenario: Scenario, options: JobOptions): RunRequest 
       (inFile === undefined ? runDefaults.tolerance : { kind: inFile.kind, value: toNumber(inFile.value) }),
     runLength: options.runLength ?? simulation.runLength,
     warmUp: typeof warmUp === 'number' ? warmUp : undefined,
+    ...(typeof warmUp === 'string' ? { warmUpRule: warmUp } : {}),
     workers: options.workers,
   }
 }

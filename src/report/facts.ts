@@ -44,10 +44,7 @@ export function factLines(
   if (simulation !== undefined) {
     const { warmUp, runLength, replications, seed, events, seconds } = simulation
     const unit = unitOf(details)
-    const part =
-      warmUp === 0
-        ? 'none'
-        : `${inUnits(warmUp, unit)} deleted before the ${trimZeros(significant(runLength, 6))} observed`
+    const part = warmUp === 0 ? 'none' : `${inUnits(warmUp, unit)} deleted before the ${amount(runLength)} observed`
     lines.push([
       'warm-up',
       `${part}${details.warmUpBasis === undefined || details.warmUpBasis === 'as given' ? ', as given' : `; ${details.warmUpBasis}`}`,
@@ -59,5 +56,8 @@ export function factLines(
   }
   return lines
 }
+
+const amount = (value: number): string =>
+  Number.isInteger(value) ? value.toLocaleString('en-US') : trimZeros(significant(value, 6))
 
 const unitOf = ({ unit }: JobDetails): string => plainText(unit, 30)

@@ -44,7 +44,8 @@ export function resultRows({ exact, simulation, comparison }: StillmarkDocument,
             : trimZeros(significant(Math.abs(compared.difference), 2)),
       allowed: compared === undefined ? '' : allowed(details.tolerances?.[name], compared.tolerance, !single),
       verdict: compared?.verdict ?? '',
-      note: simulated?.method.startsWith('no interval: ') ? simulated.method.slice(13) : '',
+      // Where nothing can be compared anyway, the reason stands above the table.
+      note: compared !== undefined && simulated?.method.startsWith('no interval: ') ? simulated.method.slice(13) : '',
     })
   }
   for (const [name, claim] of Object.entries(comparison?.claims ?? {})) {
