@@ -43,15 +43,27 @@ export function classifyCountable(model: VariablesModel, options: ClassifyOption
 }
 
 function decide(model: VariablesModel): Classification {
-  const sample = exploreWithin(model, () => true, sampleStates)
-  if (sample.complete) return finite(sample)
-  const reasons: string[] = []
   let copies: readonly Copy[]
   try {
     copies = copiesOf(model)
   } catch (error) {
     return open([reasonOf(error)])
   }
+  const decided = decideExactly(model, copies)
+  // Rates without exact fractions were taken as doubles: a sign that follows from them is no proof.
+  if (decided.grade !== 'proved' || copies[0]?.notes.approximate !== true) return decided
+  const { noSteadyState: _, ...rest } = decided
+  return {
+    ...rest,
+    grade: 'indicated',
+    basis: `${decided.basis}; some rates are no fractions and were rounded, so this is not proved`,
+  }
+}
+
+function decideExactly(model: VariablesModel, copies: readonly Copy[]): Classification {
+  const sample = exploreWithin(model, () => true, sampleStates)
+  if (sample.complete) return finite(sample)
+  const reasons: string[] = []
   const growing = growingElements(model, sample)
   const grown = growing.map(({ element }) => element)
   const varying = unboundedVarying(model, sample)

@@ -162,13 +162,13 @@ function growsIn(
 /** Every `then` of the element is itself plus a constant that is not negative. */
 function neverFalls(model: VariablesModel, copies: readonly Copy[], element: number): boolean {
   const name = model.elements[element]
-  return copies.every(({ rule, bound }) =>
+  return copies.every(({ rule, bound, notes }) =>
     rule.then.every(({ variable, value }) => {
       if (variable !== name) return true
       if ([...occurring(model, value, bound)].some((each) => each !== element)) return false
       // biome-ignore lint/suspicious/noThenProperty: the key of a transition
       const unguarded = { ...rule, when: always, rate: unit, then: [{ variable, value }] }
-      const { moves } = movesAt({ ...model, time: 'continuous' }, [{ label: 0, rule: unguarded, bound }], {
+      const { moves } = movesAt({ ...model, time: 'continuous' }, [{ label: 0, rule: unguarded, bound, notes }], {
         counts: [element],
         outward: [1],
         values: Array.from(model.start),
@@ -187,13 +187,13 @@ const unit = { kind: 'number', value: fraction(1) } as const
 function constantSpeed(model: VariablesModel, copies: readonly Copy[], element: number): Prediction[] {
   const name = model.elements[element]
   let speed: Fraction = zero
-  for (const { label, rule, bound } of copies) {
+  for (const { label, rule, bound, notes } of copies) {
     if (rule.then.every(({ variable }) => variable !== name)) continue
     if (occurring(model, rule.when, bound).size > 0 || occurring(model, rule.rate, bound).size > 0) return []
     const { moves } = movesAt(
       { ...model, time: 'continuous' },
       // biome-ignore lint/suspicious/noThenProperty: the key of a transition
-      [{ label, rule: { ...rule, then: rule.then.filter(({ variable }) => variable === name) }, bound }],
+      [{ label, rule: { ...rule, then: rule.then.filter(({ variable }) => variable === name) }, bound, notes }],
       {
         counts: [element],
         outward: [1],

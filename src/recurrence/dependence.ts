@@ -19,7 +19,7 @@ export function occurring(
     bound,
     modulus: 1n,
     residue: 0n,
-    reach: { level: 0 },
+    reach: { level: 0, approximate: false },
   }
   const visit = (node: Expression, inner: ReadonlyMap<string, Fraction> | undefined): void => {
     switch (node.kind) {

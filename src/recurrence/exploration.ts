@@ -1,4 +1,5 @@
-import type { Moves, VariablesModel } from '../model/model.js'
+import { newMoves } from '../model/compile.js'
+import type { VariablesModel } from '../model/model.js'
 
 /** States that were listed from the start, breadth first, with all moves out of those that were expanded. */
 export interface Exploration {
@@ -32,7 +33,7 @@ export function exploreWithin(
   const heads: number[][] = []
   const expanded: boolean[] = []
   const stays: boolean[] = []
-  const moves = buffers(width)
+  const moves = newMoves(width)
   let complete = true
   for (let k = 0; k < states.length; k++) {
     const here = states[k]
@@ -67,15 +68,7 @@ export function exploreWithin(
   return { states, indexOf, heads, expanded, stays, complete }
 }
 
-const buffers = (width: number): Moves => ({
-  count: 0,
-  label: new Int32Array(16),
-  rate: new Float64Array(16),
-  rateError: new Float64Array(16),
-  next: new Float64Array(16 * width),
-})
-
-/** Where `sources` can be reached from, in the arcs listed; length of the exploration. */
+/** From where the targets can be reached, in the arcs listed; length of the exploration. */
 export function reaching(exploration: Exploration, isTarget: (index: number) => boolean): Uint8Array {
   const size = exploration.states.length
   const tails: number[][] = Array.from({ length: size }, () => [])

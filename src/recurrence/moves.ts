@@ -1,5 +1,6 @@
+import { newMoves } from '../model/compile.js'
 import type { VariablesModel } from '../model/model.js'
-import { add, equal, type Fraction, fraction, isInteger, one, toNumber, zero } from '../numbers/fraction.js'
+import { add, equal, type Fraction, fraction, isInteger, one, subtract, toNumber, zero } from '../numbers/fraction.js'
 import { constantPolynomial, type Polynomial, scalePolynomial, symbol } from './polynomial.js'
 import {
   addRationals,
@@ -12,22 +13,25 @@ import {
   rationalSign,
   subtractRationals,
 } from './rational.js'
-import { bodyOf, type Expression, elementOf, holds, type Reading, type Rule, read } from './reading.js'
+import { bodyOf, type Expression, elementOf, holds, type Reach, type Reading, type Rule, read } from './reading.js'
 
 /** One copy of a transition with the values of its `each` names. */
 export interface Copy {
   readonly label: number
   readonly rule: Rule
   readonly bound: ReadonlyMap<string, Fraction>
+  /** Shared by all copies of a model: whether anything that was read is approximate. */
+  readonly notes: { approximate: boolean }
 }
 
 /** Every copy of every transition, as the model numbers them. */
 export function copiesOf(model: VariablesModel): Copy[] {
   const rules = new Map(bodyOf(model).transitions.map((rule) => [rule.name, rule] as const))
+  const notes = { approximate: false }
   return model.labels.map(({ transition, copy }, label) => {
     const rule = rules.get(transition)
     if (rule === undefined) throw new NotFollowed(`"${transition}" is not known`)
-    return { label, rule, bound: new Map(rule.each.map(({ name }, k) => [name, fraction(copy[k])] as const)) }
+    return { label, rule, notes, bound: new Map(rule.each.map(({ name }, k) => [name, fraction(copy[k])] as const)) }
   })
 }
 
@@ -60,6 +64,8 @@ export interface FarMoves {
   readonly moves: readonly FarMove[]
   /** -Infinity where nothing depends on any count but through rates as they stand. */
   readonly level: number
+  /** Some rate has no exact fraction and was taken as the nearest double: nothing is proved by it. */
+  readonly approximate: boolean
 }
 
 /**
@@ -75,14 +81,17 @@ export function movesAt(model: VariablesModel, copies: readonly Copy[], place: P
     const count: Polynomial = symbol(k, symbols)
     elements[element] = { top: place.outward[k] === 1 ? count : scalePolynomial(count, fraction(-1)), bottom: unit }
   })
-  const reach = { level: Number.NEGATIVE_INFINITY }
+  const reach: Reach = { level: Number.NEGATIVE_INFINITY, approximate: false }
   const base = { model, symbols, elements, modulus: BigInt(place.modulus), residue: BigInt(place.residue), reach }
   const moves: FarMove[] = []
   let total = rationalOf(zero, symbols)
-  for (const { label, rule, bound } of copies) {
+  for (const { label, rule, bound, notes } of copies) {
     const reading: Reading = { ...base, bound }
-    if (!holds(read(rule.when, reading), reading)) continue
+    const enabled = holds(read(rule.when, reading), reading)
+    if (reach.approximate) notes.approximate = true
+    if (!enabled) continue
     const rate = read(rule.rate, reading)
+    if (reach.approximate) notes.approximate = true
     const sign = rationalSign(rate)
     if (sign === undefined) throw new NotFollowed(`the sign of the rate of "${rule.name}" is not settled far out`)
     reach.level = Math.max(reach.level, sign.level)
@@ -102,10 +111,10 @@ export function movesAt(model: VariablesModel, copies: readonly Copy[], place: P
     }
     if (!equal(sum, one)) {
       const all = rationalOf(sum, symbols)
-      return { moves: moves.map((move) => ({ ...move, rate: divideRationals(move.rate, all) })), level: reach.level }
+      return { moves: moves.map((move) => ({ ...move, rate: divideRationals(move.rate, all) })), ...reach }
     }
   }
-  return { moves, level: reach.level }
+  return { moves, ...reach }
 }
 
 const valueBefore = (place: Place, element: number): number =>
@@ -150,30 +159,61 @@ export function stateOf(place: Place, counts: readonly number[]): number[] {
 }
 
 /**
- * Holds what was read against the model's own exact moves in one state: the same targets with the same rates.
- * @returns false where they differ, or where the model's rate is not known exactly
+ * Holds what was read against the model's own moves in one state: the same targets with the same rates, exactly; to
+ * 1e-9 of the rate where what was read is approximate.
+ * @returns false where they differ
  */
 export function agreesAt(model: VariablesModel, place: Place, far: FarMoves, counts: readonly number[]): boolean {
   const here = stateOf(place, counts)
   const key = here.join(' ')
   const own = new Map<string, Fraction>()
+  let largest = 0
   for (const { rate, next } of model.expandExactly(here)) {
-    if (rate === undefined) return false
+    if (rate === undefined) return far.approximate && agreesRoughly(model, place, far, counts)
+    largest = Math.max(largest, toNumber(rate))
     if (next.join(' ') !== key) own.set(next.join(' '), add(own.get(next.join(' ')) ?? zero, rate))
   }
+  for (const [target, rate] of movesRead(place, far, counts)) {
+    own.set(target, subtract(own.get(target) ?? zero, rate))
+  }
+  return nothingLeft(
+    far,
+    [...own.values()].map((rest) => (rest.numerator === 0n ? 0 : toNumber(rest))),
+    far.approximate ? 1e-9 * largest : 0,
+  )
+}
+
+function movesRead(place: Place, far: FarMoves, counts: readonly number[]): [string, Fraction][] {
   const at = counts.map(BigInt)
-  for (const move of far.moves) {
-    if (move.jump === undefined) continue
+  return far.moves.flatMap((move) => {
+    const { jump } = move
+    if (jump === undefined) return []
     const next = stateOf(
       { ...place, values: move.values },
-      counts.map((count, k) => count + (move.jump as number[])[k]),
+      counts.map((count, k) => count + jump[k]),
     )
-    const rate = evaluateRational(move.rate, at)
-    const rest = add(own.get(next.join(' ')) ?? zero, { numerator: -rate.numerator, denominator: rate.denominator })
-    own.set(next.join(' '), rest)
+    return [[next.join(' '), evaluateRational(move.rate, at)]]
+  })
+}
+
+function agreesRoughly(model: VariablesModel, place: Place, far: FarMoves, counts: readonly number[]): boolean {
+  const here = stateOf(place, counts)
+  const own = new Map<string, number>()
+  const moves = newMoves(model.width)
+  model.expand(here, moves)
+  let largest = 0
+  for (let k = 0; k < moves.count; k++) {
+    const target = Array.from(moves.next.subarray(k * model.width, (k + 1) * model.width)).join(' ')
+    largest = Math.max(largest, moves.rate[k])
+    if (target !== here.join(' ')) own.set(target, (own.get(target) ?? 0) + moves.rate[k])
   }
-  // What resets a count is left over: it was read as positive, its target was not.
+  for (const [target, rate] of movesRead(place, far, counts)) own.set(target, (own.get(target) ?? 0) - toNumber(rate))
+  return nothingLeft(far, [...own.values()], 1e-9 * largest)
+}
+
+/** What resets a count is left over: it was read as positive, its target was not. */
+function nothingLeft(far: FarMoves, rests: readonly number[], tolerance: number): boolean {
   const resets = far.moves.filter((move) => move.jump === undefined).length
-  const left = [...own.values()].filter((rest) => rest.numerator !== 0n)
-  return resets === 0 ? left.length === 0 : left.length <= resets && left.every((rest) => rest.numerator > 0n)
+  const left = rests.filter((rest) => Math.abs(rest) > tolerance)
+  return resets === 0 ? left.length === 0 : left.length <= resets && left.every((rest) => rest > 0)
 }

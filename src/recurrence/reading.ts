@@ -1,14 +1,18 @@
+import { exactValues } from '../model/exact-fallback.js'
 import type { VariablesModel } from '../model/model.js'
+import { poisson, poissonTail } from '../model/probability-functions.js'
 import {
   add,
   divide,
   type Fraction,
   floor,
   fraction,
+  fractionOfDouble,
   isInteger,
   multiply,
   one,
   subtract,
+  toNumber,
   zero,
 } from '../numbers/fraction.js'
 import { addPolynomials, coefficientsOf, constantPolynomial, degreeOf, polynomialOf, symbolsIn } from './polynomial.js'
@@ -53,7 +57,13 @@ export interface Reading {
   /** Of a single count: it is `residue` modulo `modulus`. */
   readonly modulus: bigint
   readonly residue: bigint
-  readonly reach: { level: number }
+  readonly reach: Reach
+}
+
+export interface Reach {
+  level: number
+  /** Some value has no exact fraction and was taken as the nearest double. */
+  approximate: boolean
 }
 
 /** Thrown where an expression depends on the remainder of the count: read again with a multiple of `modulus`. */
@@ -212,6 +222,7 @@ function reachNonZero(value: Rational, reading: Reading): void {
 }
 
 function called(expression: Kind<'call'>, reading: Reading): Rational {
+  const { symbols } = reading
   const args = expression.args.map((each) => read(each, reading))
   switch (expression.name) {
     case 'min':
@@ -225,8 +236,48 @@ function called(expression: Kind<'call'>, reading: Reading): Rational {
       return floorOf(args[0], reading)
     case 'ceil':
       return negateRational(floorOf(negateRational(args[0]), reading))
+    default: {
+      const constants = args.map(constantIn)
+      if (constants.some((each) => each === undefined)) {
+        throw new NotFollowed(`"${expression.name}" of an unbounded variable is not followed`)
+      }
+      return rationalOf(calledWith(expression.name, constants as readonly Fraction[], reading), symbols)
+    }
+  }
+}
+
+/** A function of constants: exact where it is rational, else the nearest double, and that is noted. */
+function calledWith(name: Kind<'call'>['name'], args: readonly Fraction[], reading: Reading): Fraction {
+  try {
+    const call = { kind: 'call', name, args: args.map((value) => ({ kind: 'number', value }) as const) } as const
+    const exact = exactValues(reading.model.scenario, new Map())(call, [])
+    if (exact !== undefined) return exact
+    const value = doubleOf(name, args.map(toNumber))
+    if (value !== undefined && Number.isFinite(value)) {
+      reading.reach.approximate = true
+      return fractionOfDouble(value)
+    }
+  } catch (error) {
+    // A function without a value there: the model itself says so where such a state is met.
+    if (!(error instanceof Error)) throw error
+  }
+  throw new NotFollowed(`"${name}" has no value that can be followed`)
+}
+
+function doubleOf(name: Kind<'call'>['name'], [first, second]: readonly number[]): number | undefined {
+  switch (name) {
+    case 'exp':
+      return Math.exp(first)
+    case 'log':
+      return Math.log(first)
+    case 'sqrt':
+      return Math.sqrt(first)
+    case 'poisson':
+      return poisson(first, second, 0).value
+    case 'poisson_tail':
+      return poissonTail(first, second, 0).value
     default:
-      throw new NotFollowed(`"${expression.name}" has no exact value as a fraction`)
+      return undefined
   }
 }
 

@@ -344,13 +344,30 @@ describe('what is not followed stays open', () => {
   test.each([
     ['sqrt(n + 1)', 'n'],
     ['2 - 0.5^n', '2'],
-    ['exp(-1)', '1'],
+    ['2 + exp(-n)', '2'],
     ['if(n % 1009 == 0, 2, 1)', '1.5'],
   ])('births %s, deaths %s', (birth, death) => {
     expect(classifyCountable(birthDeath(birth, death), plain)).toMatchObject({
       recurrence: 'undetermined',
       grade: 'open',
     })
+  })
+
+  test('a rate without an exact fraction is judged by its rounded value, and that is no proof', () => {
+    expect(classifyCountable(birthDeath('exp(-1)', '1'), plain)).toMatchObject({
+      recurrence: 'positive recurrent',
+      grade: 'indicated',
+    })
+  })
+
+  test('binomial batches are fractions: two come on average, two go', () => {
+    const model = modelOf(`
+      time: discrete
+      state: { n: { from: 0, start: 0 } }
+      transitions:
+        step: { each: { k: { from: 0, to: 4 } }, probability: "binomial(k, 4, 1/2)", then: { n: "max(n - 2, 0) + k" } }
+    `)
+    expect(classifyCountable(model, plain)).toMatchObject({ recurrence: 'null recurrent', grade: 'proved' })
   })
 
   test('evidence of a pilot run is taken over as indicated, never as proved', () => {
