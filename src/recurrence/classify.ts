@@ -7,6 +7,7 @@ import { classifyWalk } from './lattice-walk.js'
 import { type Copy, copiesOf } from './moves.js'
 import { classifyOneVariable } from './one-variable.js'
 import { classifyNetwork } from './open-network.js'
+import { classifyByQuadratic } from './quadratic-drift.js'
 import { classifyQuarterPlane } from './quarter-plane.js'
 import { NotFollowed } from './rational.js'
 import { NeedsModulus } from './reading.js'
@@ -21,8 +22,8 @@ export interface ClassifyOptions {
   readonly evidence?: (model: VariablesModel) => Pick<Classification, 'recurrence' | 'basis'> | undefined
 }
 
-/** States of the first look at a model. */
-const sampleStates = 3000
+/** States of the first look at a model; the second number where the first look decides nothing. */
+const sampleSizes: readonly number[] = [600, 6000]
 
 /**
  * Decides whether a model whose states can't be listed is positive recurrent, null recurrent or transient, seen from its
@@ -61,8 +62,18 @@ function decide(model: VariablesModel): Classification {
 }
 
 function decideExactly(model: VariablesModel, copies: readonly Copy[]): Classification {
-  const sample = exploreWithin(model, () => true, sampleStates)
-  if (sample.complete) return finite(sample)
+  let found: Classification | undefined
+  for (const size of sampleSizes) {
+    const sample = exploreWithin(model, () => true, size)
+    if (sample.complete) return finite(sample)
+    const next = decideFrom(model, copies, sample)
+    if (found === undefined || next.grade !== 'open') found = next
+    if (found.grade !== 'open') break
+  }
+  return found as Classification
+}
+
+function decideFrom(model: VariablesModel, copies: readonly Copy[], sample: Exploration): Classification {
   const reasons: string[] = []
   const growing = growingElements(model, sample)
   const grown = growing.map(({ element }) => element)
@@ -83,6 +94,10 @@ function decideExactly(model: VariablesModel, copies: readonly Copy[]): Classifi
         : [
             () => classifyWalk(model, copies, elements),
             () => networkOrPlane(model, copies, elements),
+            () =>
+              elements.length === 2
+                ? classifyByQuadratic(model, copies, [elements[0], elements[1]], sample)
+                : undefined,
             () => classifyCounters(model, copies, elements, decide),
           ]
     let best: Classification | undefined

@@ -5,7 +5,6 @@ import {
   add,
   compare,
   divide,
-  equal,
   type Fraction,
   fraction,
   multiply,
@@ -15,6 +14,7 @@ import {
   zero,
 } from '../numbers/fraction.js'
 import type { Classification, Remedy } from './classification.js'
+import { simplestBetween } from './simplest-fraction.js'
 
 /** Factors by which a constant is moved, nearest first, until the model has a steady state. */
 const factors: readonly Fraction[] = [
@@ -112,23 +112,6 @@ function between(
 const shortened = (value: Fraction): Fraction => {
   const bits = 60n
   return value.denominator < 1n << bits ? value : fraction((value.numerator << bits) / value.denominator, 1n << bits)
-}
-
-/** The fraction with the smallest denominator between two, ends included (the mediant search of Stern and Brocot). */
-export function simplestBetween(a: Fraction, b: Fraction): Fraction {
-  const [low, high] = compare(a, b) <= 0 ? [a, b] : [b, a]
-  if (high.numerator < 0n) {
-    const mirrored = simplestBetween(subtract(zero, high), subtract(zero, low))
-    return subtract(zero, mirrored)
-  }
-  if (low.numerator <= 0n) return zero
-  const whole = low.numerator / low.denominator
-  const floor = fraction(whole)
-  if (equal(floor, low)) return low
-  const next = fraction(whole + 1n)
-  if (compare(next, high) <= 0) return next
-  const rest = simplestBetween(divide(one, subtract(high, floor)), divide(one, subtract(low, floor)))
-  return add(floor, divide(one, rest))
 }
 
 function withConstant(model: VariablesModel, name: string, value: Fraction): VariablesModel {

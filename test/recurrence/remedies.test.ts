@@ -1,7 +1,7 @@
 import { describe, expect, test } from 'vitest'
 import { fraction, toText } from '../../src/numbers/fraction.js'
 import { classifyCountable } from '../../src/recurrence/classify.js'
-import { simplestBetween } from '../../src/recurrence/remedies.js'
+import { simplestBetween } from '../../src/recurrence/simplest-fraction.js'
 import { birthDeath, modelOf } from './model-of.js'
 
 const remedies = (model: Parameters<typeof classifyCountable>[0]) =>

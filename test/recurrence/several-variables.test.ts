@@ -141,6 +141,48 @@ describe('quarter plane (Fayolle, Malyshev and Menshikov 1995, 3.3)', () => {
   })
 })
 
+describe('two counts with wide strips or phases (Foster 1953 with a quadratic function)', () => {
+  // Two clerks; urgent cases go before others. The work that comes is (a + b)/2 of what both can do.
+  const urgent = (a: string, b: string) =>
+    modelOf(`
+    state: { urgent: { from: 0, start: 0 }, other: { from: 0, start: 0 } }
+    transitions:
+      come_urgent: { rate: ${a}, then: { urgent: urgent + 1 } }
+      come_other: { rate: ${b}, then: { other: other + 1 } }
+      go_urgent: { rate: "min(urgent, 2)", then: { urgent: urgent - 1 } }
+      go_other: { rate: "min(other, 2 - min(urgent, 2))", then: { other: other - 1 } }
+  `)
+  test('two clerks with priorities: proved where each line of states leads back', () => {
+    expect(classifyCountable(urgent('1/4', '1/2'), plain)).toMatchObject({
+      recurrence: 'positive recurrent',
+      grade: 'proved',
+      theorem: 'Foster 1953',
+    })
+  })
+
+  test.each([
+    ['1', '1'], // exactly balanced
+    ['1', '3/2'],
+    ['5/2', '1/4'],
+  ])('with more work than they can do, at %s and %s, nothing is proved', (a, b) => {
+    expect(classifyCountable(urgent(a, b), plain).grade).toBe('open')
+  })
+
+  // A gate that is shut now and then stops both lines at once: in each phase alone nothing leads back while it is shut.
+  test('a phase in which both lines grow is beyond it', () => {
+    const model = modelOf(`
+      state: { x: { from: 0, start: 0 }, y: { from: 0, start: 0 }, shut: { from: 0, to: 1, start: 0 } }
+      transitions:
+        come_x: { rate: 1/10, then: { x: x + 1 } }
+        come_y: { rate: 1/10, then: { y: y + 1 } }
+        go_x: { when: x > 0 and shut == 0, rate: 1, then: { x: x - 1 } }
+        go_y: { when: y > 0 and shut == 0, rate: 1, then: { y: y - 1 } }
+        turn: { rate: 1, then: { shut: 1 - shut } }
+    `)
+    expect(classifyCountable(model, plain).grade).toBe('open')
+  })
+})
+
 describe('walks in several dimensions (Pólya 1921; Chung and Fuchs 1951)', () => {
   const walk = (jumps: readonly (readonly number[])[], time = 'continuous') => {
     const d = jumps[0].length
