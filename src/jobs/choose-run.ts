@@ -27,6 +27,8 @@ const pilotPoints = 1000
 /** Firings a replication of the first pilot has; each further one is four times as long. */
 const firstPilot = 1000
 const pilotEvents = 6e6
+/** The same where the moves of each state are worked out as it is met, which takes ten times as long. */
+const pilotEventsWithoutStates = 6e5
 /** A cut within this part of the pilot's length is early enough to be believed. */
 const earlyCut = 0.25
 /** Events in all, where the moves of each state are worked out as it is met. */
@@ -241,7 +243,8 @@ async function pilotWarmUp(
   const perTimeUnit = Math.max(eventsPerTimeUnit(ground, exact, undefined), 1e-300)
   // A single long replication has no others to be averaged with: pilots always have a few.
   const pilots = Math.min(Math.max(replications, 8), 32)
-  const longest = pilotEvents / pilots / perTimeUnit
+  const budget = finite === undefined ? pilotEventsWithoutStates : pilotEvents
+  let longest = budget / pilots / perTimeUnit
   let length = Math.min(firstPilot / perTimeUnit, longest)
   for (;;) {
     const steps = discrete ? Math.max(1, Math.ceil(length)) : length
@@ -251,7 +254,7 @@ async function pilotWarmUp(
       model,
       finite?.chain,
       { seed, replications: pilots, length: steps, points },
-      { workers, signal, maxEvents: Math.ceil((4 * pilotEvents) / pilots) },
+      { workers, signal, maxEvents: Math.ceil((4 * budget) / pilots) },
     )
     const cuts = Object.values(pilot.measures).flatMap((measure) =>
       (measure.kind === 'mean' ? [measure.means] : [measure.top, measure.bottom]).map((series) =>
@@ -279,6 +282,10 @@ async function pilotWarmUp(
         unsettled: worst.settled ? 'the best cut lies late in the longest pilot' : worst.why,
       }
     }
+    if (exact === undefined) longest = budget / Math.max(pilot.events / steps, 1e-300)
     length = Math.min(4 * length, longest)
+    if (length <= steps) {
+      return { pilot, warmUp: steps, basis: 'the whole pilot is deleted', unsettled: worst.why }
+    }
   }
 }
