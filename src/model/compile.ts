@@ -168,7 +168,8 @@ function truthOf(of: Functional): Functional {
   const { value: counted } = of
   const holds = (state: ArrayLike<number>): boolean => {
     const value = counted.valueOf(state)
-    if (Math.abs(value) > counted.errorOf(state)) return true
+    const error = counted.errorOf(state)
+    if (error === 0 || Math.abs(value) > error) return value !== 0
     const exact = counted.exactOf(state)
     return exact === undefined ? value !== 0 : exact.numerator !== 0n
   }
