@@ -1,6 +1,7 @@
 import { randomBytes } from 'node:crypto'
-import { mkdir, open, rename, rm } from 'node:fs/promises'
-import { basename, join } from 'node:path'
+import { constants } from 'node:fs'
+import { access, mkdir, open, rename, rm, stat } from 'node:fs/promises'
+import { basename, dirname, join, resolve } from 'node:path'
 import { StillmarkError } from '../errors/stillmark-error.js'
 
 /** What a report's files are called: the scenario's own name, with a number where several share it. */
@@ -18,10 +19,29 @@ export function reportNames(files: readonly string[]): string[] {
 /** Makes the folder before anything is run: a report that can't be written should not cost a run. */
 export async function prepareFolder(folder: string): Promise<void> {
   try {
-    await mkdir(folder, { recursive: true })
-    await write(folder, [])
+    await makeFolder(folder)
+    await access(folder, constants.W_OK)
   } catch (error) {
     throw notWritten(folder, error)
+  }
+}
+
+/** Step by step: `mkdir` with `recursive` never ends where the file system refuses new folders, as /proc does (Node 20). */
+async function makeFolder(folder: string): Promise<void> {
+  const isFolder = async (path: string): Promise<boolean> => {
+    try {
+      return (await stat(path)).isDirectory()
+    } catch {
+      return false
+    }
+  }
+  if (await isFolder(folder)) return
+  const above = dirname(resolve(folder))
+  if (above !== resolve(folder)) await makeFolder(above)
+  try {
+    await mkdir(folder)
+  } catch (error) {
+    if (!(await isFolder(folder))) throw error // another program may have made it just now
   }
 }
 
@@ -69,6 +89,7 @@ const reasons: Readonly<Record<string, string>> = {
   ENOSPC: 'the disk is full',
   EDQUOT: 'the disk quota is used up',
   EEXIST: 'there is a file of that name',
+  ENOENT: 'no folder can be made there',
   ENOTDIR: 'a part of the path is a file',
   EISDIR: 'a folder stands where a file should go',
   ENAMETOOLONG: 'the name is too long',

@@ -1,17 +1,25 @@
-/** Digits that a table shows of an exact value at most: more would not be read. */
+/** Digits that a table of several columns shows of an exact value at most: more would not be read. */
 const mostDigits = 6
 
-/** An exact value: six significant digits, fewer where its error bound supports fewer. */
-export function exactDigits(value: number, errorBound: number): string {
+/** An exact value: so many significant digits at most, fewer where its error bound supports fewer. */
+export function exactDigits(value: number, errorBound: number, most = mostDigits): string {
   if (!Number.isFinite(value)) return String(value)
   if (value === 0) return '0'
   // Known without any error: its zeros at the end tell nothing.
-  if (errorBound === 0) return trimZeros(significant(value, mostDigits))
-  const supported = errorBound > 0 ? Math.floor(Math.log10(Math.abs(value) / errorBound)) : mostDigits
-  return significant(value, Math.max(1, Math.min(mostDigits, supported)))
+  if (errorBound === 0) return trimZeros(significant(value, most))
+  const supported = Math.floor(Math.log10(Math.abs(value) / errorBound))
+  return significant(value, Math.max(1, Math.min(most, supported)))
 }
 
-/** An estimate to the second digit of its half-width, and the half-width with two digits: `0.1149 ± 0.0007`. */
+/** A bound on an error, rounded up: what is shown is a bound too. `2e-16`, `0`. */
+export function boundDigits(errorBound: number): string {
+  if (errorBound === 0 || !Number.isFinite(errorBound)) return String(errorBound)
+  const [mantissa, exponent] = errorBound.toExponential(16).split('e')
+  const up = Math.ceil(Number(mantissa))
+  return up === 10 ? `1e${Number(exponent) + 1}` : `${up}e${Number(exponent)}`
+}
+
+/** An estimate to the second digit of its half-width, and the half-width with two digits: `0.11490 ± 0.00070`. */
 export function estimateDigits(
   estimate: number,
   halfWidth: number | null,
@@ -19,9 +27,14 @@ export function estimateDigits(
   if (halfWidth === null || !Number.isFinite(halfWidth)) return { estimate: significant(estimate, 4), halfWidth: '' }
   if (halfWidth === 0) return { estimate: trimZeros(significant(estimate, mostDigits)), halfWidth: '0' }
   const place = Math.floor(Math.log10(halfWidth)) - 1
-  // A half-width is told with one digit less where that is a round 1 or larger: two digits are what it supports.
-  if (place < -12 || Math.abs(estimate) >= 1e15)
-    return { estimate: significant(estimate, 6), halfWidth: significant(halfWidth, 2) }
+  const size = Math.abs(estimate)
+  if (place < -12 || size >= 1e9 || (size > 0 && size < 1e-6)) {
+    const digits = size === 0 ? 1 : Math.floor(Math.log10(size)) - place + 1
+    return {
+      estimate: significant(estimate, Math.max(1, Math.min(15, digits))),
+      halfWidth: significant(halfWidth, 2),
+    }
+  }
   return { estimate: atPlace(estimate, place), halfWidth: atPlace(halfWidth, place) }
 }
 
@@ -69,10 +82,14 @@ export function countInWords(count: number): string {
 }
 
 /** A length of time in the scenario's unit: `1 hour`, `20,000 hours`. */
-export function inUnits(value: number, unit: string): string {
-  const number = Number.isInteger(value) ? value.toLocaleString('en-US') : trimZeros(significant(value, 3))
-  return `${number} ${value === 1 || /s$/i.test(unit) ? unit : `${unit}s`}`
-}
+export const inUnits = (value: number, unit: string): string =>
+  `${amount(value)} ${value === 1 || /s$/i.test(unit) ? unit : `${unit}s`}`
+
+/** A setting as a sentence tells it: whole numbers whole, others with up to four digits. */
+export const amount = (value: number): string =>
+  Number.isInteger(value) && Math.abs(value) < 1e15
+    ? value.toLocaleString('en-US', { useGrouping: Math.abs(value) >= 10_000 })
+    : trimZeros(significant(value, 4))
 
 export const trimZeros = (text: string): string =>
   text.includes('.') && !text.includes('e') ? text.replace(/\.?0+$/, '') : text

@@ -1,6 +1,6 @@
 import type { StillmarkDocument } from '../jobs/document.js'
 import type { JobDetails } from '../jobs/job-result.js'
-import { countInWords, inUnits, significant, trimZeros } from './digits.js'
+import { amount, countInWords, inUnits, significant, trimZeros } from './digits.js'
 import { plainText } from './plain-text.js'
 
 /** The lines under the table: what the verdict rests on. Label and text. */
@@ -34,11 +34,14 @@ export function factLines(
       lines.push(['settles', `after ${inUnits(structure.meanTimeToSettle, unitOf(details))} on average`])
     }
   }
-  if (details.expectationMet !== undefined) {
-    lines.push([
-      'expected',
-      `${plainText(details.expect ?? '')}: ${details.expectationMet ? 'so it is' : `but it is ${structure?.recurrence}`}`,
-    ])
+  if (details.expect !== undefined && structure !== undefined) {
+    const found =
+      structure.recurrence === 'undetermined'
+        ? 'that stays open'
+        : details.expect === structure.recurrence || (details.expect === 'explosive' && structure.explosive === true)
+          ? 'and so it is'
+          : `but it is ${structure.recurrence}`
+    lines.push(['expected', `${plainText(details.expect)}, ${found}`])
   }
   if (exact !== undefined && exact !== null) lines.push(['exact by', exact.method])
   if (simulation !== undefined) {
@@ -56,8 +59,5 @@ export function factLines(
   }
   return lines
 }
-
-const amount = (value: number): string =>
-  Number.isInteger(value) ? value.toLocaleString('en-US') : trimZeros(significant(value, 6))
 
 const unitOf = ({ unit }: JobDetails): string => plainText(unit, 30)

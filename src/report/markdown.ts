@@ -14,7 +14,7 @@ export interface Versions {
 export function toMarkdown({ document, details }: JobResult, versions: Versions): string {
   const { scenario, comparison, simulation, structure, exact } = document
   const parts: string[] = [`# ${escaped(scenario.title)}`]
-  const sentence = verdictSentence(document)
+  const sentence = verdictSentence(document, details)
   if (sentence !== '') parts.push(`**${escaped(sentence)}**`)
   const rows = resultRows(document, details)
   if (rows.length > 0) {

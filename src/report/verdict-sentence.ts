@@ -1,7 +1,44 @@
 import type { StillmarkDocument } from '../jobs/document.js'
+import type { JobDetails } from '../jobs/job-result.js'
 
 /** The answer in a sentence or two: what a reader who stops there takes along. */
-export function verdictSentence({ comparison, structure, exact }: StillmarkDocument): string {
+export function verdictSentence(document: StillmarkDocument, { expect }: Pick<JobDetails, 'expect'>): string {
+  const sentence = document.comparison === undefined ? structureSentence(document) : comparisonSentence(document)
+  const { structure } = document
+  if (expect === undefined || structure === undefined || structure.recurrence === 'undetermined') return sentence
+  const met = expect === structure.recurrence || (expect === 'explosive' && structure.explosive === true)
+  if (!met) return `The model is ${structure.recurrence}, not ${expect} as the file expects. ${sentence}`
+  return expect === 'positive recurrent' ? sentence : `${sentence} That is what the file expects.`
+}
+
+/** Of commands that compare nothing: what is known of the long run. */
+function structureSentence({ format, structure, exact, simulation }: StillmarkDocument): string {
+  if (structure === undefined) return ''
+  const { recurrence, closedClasses } = structure
+  const reached = closedClasses.filter((each) => each.reachedWith > 0).length
+  const values =
+    exact === undefined || exact === null || Object.keys(exact.measures).length === 0
+      ? simulation === undefined
+        ? ''
+        : ' Simulated, and compared with nothing:'
+      : ' Its long-run values, exactly:'
+  switch (recurrence) {
+    case 'undetermined':
+      return `It is open whether this model settles in a steady state.${values}`
+    case 'mixed':
+      return `The model settles in a steady state in part of the cases only.${values}`
+    case 'positive recurrent':
+      return reached > 1
+        ? `The model settles in one of ${reached} closed classes, and chance decides in which.${values}`
+        : `The model has a steady state.${values}`
+    default:
+      return format === 'stillmark/solve/1'
+        ? `There is nothing to solve: the model has no steady state, it is ${recurrence}.`
+        : `The model has no steady state: it is ${recurrence}.${values}`
+  }
+}
+
+function comparisonSentence({ comparison, structure, exact }: StillmarkDocument): string {
   if (comparison === undefined) return ''
   const measures = Object.values(comparison.measures)
   const claims = Object.values(comparison.claims)
