@@ -199,6 +199,20 @@ describe('jumps of any size and phases', () => {
     })
   })
 
+  // Far out: 2 - 1/(n + 1) is rounded down to 1, 1 + 1/(n + 1) up to 2, half a count by turns.
+  test.each([
+    ['floor(2 - 1/(n + 1))', '1', 'null'],
+    ['floor(2 + 1/(n + 1))', '1', 'transient'],
+    ['ceil(1 + 1/(n + 1))', '2', 'null'],
+    ['ceil(1 - 1/(n + 2))', '1', 'null'],
+    ['1', '1 + floor(n/2) - floor((n - 1)/2)', 'positive'],
+    ['1', '2*(floor(n/2) - floor((n - 1)/2)) + (n % 2)/2', 'null'], // 2 and 1/2 by turns
+    // With n = 3k + 0, 1, 2: k, k, k + 1 up, k + 1 down: weights k^(-3) by the three ratios.
+    ['floor(n/3 + 1/2) + (n == 0)', 'floor(n/3) + 1', 'positive'],
+  ] as const)('rounding: births %s, deaths %s: %s', (birth, death, expected) => {
+    expect(classifyCountable(birthDeath(birth, death), plain)).toMatchObject({ recurrence: classes[expected] })
+  })
+
   test('jumps that leave out every other value are no obstacle', () => {
     const model = (rate: string) =>
       modelOf(`
@@ -233,8 +247,10 @@ describe('jumps of any size and phases', () => {
   // Down with 2/3 + d/n: drift -3d/n (up loses d: 2·(-d) - d): 2c/σ² = -3d: positive for d > 1/3.
   test.each([
     ['0.334', 'positive'],
+    ['1/3', 'null'],
     ['0.333', 'null'],
     ['-0.333', 'null'],
+    ['-1/3', 'null'],
     ['-0.334', 'transient'],
   ] as const)('steps of +2 and -1 whose drift vanishes like -3·%s/n: %s', (d, expected) => {
     const model = modelOf(`

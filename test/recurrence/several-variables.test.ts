@@ -55,11 +55,12 @@ describe('open networks (Jackson 1957, 1963)', () => {
 
   // With input 5 the first station passes on 3, the second 2, the third all of it (Goodman and Massey 1984).
   test('bottlenecks hold back what comes after them', () => {
-    const { growth } = classifyCountable(line(['3', '2', '4'], '5'), plain)
+    const { growth } = classifyCountable(line(['3', '2', '4', '3'], '5'), plain)
     expect(growth?.map(({ name, exact }) => `${name} ${exact && toText(exact)}`)).toEqual([
       'speed_queue[1] 2',
       'speed_queue[2] 1',
       'speed_queue[3] 0',
+      'speed_queue[4] 0',
     ])
   })
 
