@@ -1,12 +1,14 @@
 import { shownState } from '../chain/shown-state.js'
 import { adjustedConfidence, compareRun } from '../comparison/compare-run.js'
+import { divergenceFindings } from '../comparison/divergence-findings.js'
 import type { StructureFacts } from '../comparison/structure-findings.js'
-import type { Comparison } from '../comparison/verdict.js'
+import type { Comparison, Finding } from '../comparison/verdict.js'
 import type { ExactAnswer } from '../stationary/exact-answer.js'
 import { solve } from '../stationary/solve.js'
 import { chooseRun } from './choose-run.js'
 import { withDeadline } from './deadline.js'
-import type { StillmarkDocument } from './document.js'
+import { divergencePart } from './divergence.js'
+import type { DivergencePart, StillmarkDocument, StructurePart } from './document.js'
 import { adjustedEstimates } from './estimates.js'
 import { exactPart } from './exact-part.js'
 import { type Ground, layGround } from './ground.js'
@@ -30,7 +32,7 @@ export async function check(file: string, options: JobOptions = {}): Promise<Job
   report.onProgress({ stage: 'comparing' })
   const { settings } = chosen
   const confidence = adjustedConfidence(request.confidence, ground.model.measures.length)
-  const comparison = compareRun({
+  const compared = compareRun({
     exact,
     adjusted: adjustedEstimates(ground.model, simulated.observations, simulated.estimates, confidence),
     tolerance: request.tolerance,
@@ -44,13 +46,17 @@ export async function check(file: string, options: JobOptions = {}): Promise<Job
       warmUp: settings.warmUp,
       unsettled: exact === undefined ? undefined : chosen.unsettled,
     },
-    causes: ground.part.recurrence === 'undetermined' ? [openClass(ground.part)] : [],
+    causes: causesOf(ground),
   })
+  const perTimeUnit = simulated.observations.events / (settings.replications * (settings.warmUp + settings.runLength))
+  const divergence = await divergencePart(ground, request, perTimeUnit, report.signal)
+  const comparison = withoutSteadyState(compared, ground, divergence)
   const document: StillmarkDocument = {
     format: 'stillmark/check/1',
     scenario: scenarioPart(ground.scenario),
     structure: ground.part,
     ...exactPart(exact, () => explain(ground.part)),
+    ...(divergence === undefined ? {} : { divergence }),
     simulation: simulated.part,
     comparison,
   }
@@ -58,12 +64,12 @@ export async function check(file: string, options: JobOptions = {}): Promise<Job
     document,
     exitStatus: exitStatusOf(ground, comparison),
     details: {
-      ...detailsOf(ground.scenario, nextOf(comparison), request),
+      ...detailsOf(ground.scenario, nextOf(comparison, exact), request),
       warmUpBasis: chosen.warmUpBasis,
       runLengthBasis: chosen.runLengthBasis,
       ...(ground.scenario.expect === undefined || ground.part.recurrence === 'undetermined'
         ? {}
-        : { expectationMet: ground.scenario.expect === ground.part.recurrence }),
+        : { expectationMet: isExpected(ground.scenario.expect, ground.part) }),
     },
   }
 }
@@ -103,13 +109,38 @@ export function structureFacts({ finite }: Ground, exact: ExactAnswer | undefine
   }
 }
 
+/** What is the matter with a model that has no steady state, or whose class is open. */
+export function causesOf({ part, countable }: Ground): Finding[] {
+  if (countable === undefined) return []
+  return part.recurrence === 'undetermined' ? [openClass(part)] : divergenceFindings(countable)
+}
+
+/** There is nothing to agree with: but a simulation that contradicts the predicted growth is off all the same. */
+function withoutSteadyState(
+  compared: Comparison,
+  { part }: Ground,
+  divergence: DivergencePart | undefined,
+): Comparison {
+  if (part.recurrence !== 'null recurrent' && part.recurrence !== 'transient') return compared
+  const off = Object.values(divergence?.predictions ?? {}).some(({ verdict }) => verdict === 'disagrees')
+  return { ...compared, verdict: off ? 'disagrees' : 'no steady state' }
+}
+
 /** An expectation that the structure contradicts is a disagreement, whatever the numbers say. */
 function exitStatusOf({ scenario, part }: Ground, { verdict }: Comparison): 0 | 1 | 3 {
   const { expect } = scenario
-  if (expect !== undefined && part.recurrence !== 'undetermined' && expect !== part.recurrence) return 1
+  if (expect !== undefined && part.recurrence !== 'undetermined' && !isExpected(expect, part)) return 1
+  if (verdict === 'no steady state') return expect === undefined ? 1 : 0
   return verdict === 'agrees' ? 0 : verdict === 'undecided' ? 3 : 1
 }
 
-function nextOf({ findings, verdict }: Comparison): string {
-  return verdict === 'agrees' || findings.length === 0 ? 'nothing' : findings[0].next
+export const isExpected = (expect: string, { recurrence, explosive }: StructurePart): boolean =>
+  expect === 'explosive' ? explosive === true : expect === recurrence
+
+function nextOf({ findings, verdict }: Comparison, exact: ExactAnswer | undefined): string {
+  if (verdict === 'agrees') return 'nothing'
+  if (findings.length > 0) return findings[0].next
+  return exact === undefined
+    ? 'For an exact answer, give each variable an upper bound ("to:") that it hardly ever reaches.'
+    : 'nothing'
 }

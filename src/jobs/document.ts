@@ -11,6 +11,7 @@ export interface StillmarkDocument {
   readonly exact?: ExactPart | null
   /** Why `exact` is null. */
   readonly exactAbsent?: string
+  readonly divergence?: DivergencePart
   readonly simulation?: SimulationPart
   readonly comparison?: Comparison
   /** Of commands that compare nothing (`simulate`, `classify`, `solve`): what there is to say. */
@@ -40,16 +41,30 @@ export interface StructurePart {
   readonly basis: string
   readonly closedClasses: readonly {
     readonly size: number | null
-    readonly period: number
-    readonly reachedWith: number
+    /** null where it is not known. */
+    readonly period: number | null
+    /** null where it is not known. */
+    readonly reachedWith: number | null
     readonly states?: readonly ShownState[]
   }[]
   readonly transientStates: number | null
   /** Expected time until a closed class is entered. */
   readonly meanTimeToSettle: number | null
   readonly explosive?: boolean
-  readonly drift?: unknown
-  readonly growth?: unknown
+  /** The hypotheses of the theorem as they were checked. */
+  readonly checked?: readonly string[]
+  readonly drift?: readonly {
+    readonly of: string
+    readonly where: string
+    readonly value: number
+    readonly exact?: string
+  }[]
+  readonly growth?: readonly {
+    readonly name: string
+    readonly value: number
+    readonly means: string
+    readonly source: string
+  }[]
 }
 
 export interface ExactPart {
@@ -63,6 +78,27 @@ export interface ExactPart {
   >
   /** `solve --states`: at most 100,000. */
   readonly distribution?: readonly (readonly [ShownState, number])[]
+}
+
+/** What a model without steady state does instead, and what the simulation shows of it. */
+export interface DivergencePart {
+  readonly predictions: Readonly<Record<string, PredictionPart>>
+  /** The nearest values of constants at which the class changes. */
+  readonly remedies: readonly {
+    readonly constant: string
+    readonly now: number
+    readonly threshold: number
+    readonly steadyWhen: 'below' | 'above'
+  }[]
+}
+
+export interface PredictionPart {
+  readonly predicted: number
+  /** null where it was not simulated. */
+  readonly observed: number | null
+  readonly halfWidth: number | null
+  readonly verdict: 'agrees' | 'disagrees' | 'undecided'
+  readonly inMean?: boolean
 }
 
 export interface SimulationPart {

@@ -5,18 +5,22 @@ import { structureOf } from '../chain/structure.js'
 import { StillmarkError } from '../errors/stillmark-error.js'
 import { compile } from '../model/compile.js'
 import type { Model } from '../model/model.js'
+import type { Classification } from '../recurrence/classification.js'
+import { classifyCountable } from '../recurrence/classify.js'
 import { readScenario } from '../scenario/read-scenario.js'
 import type { Scenario } from '../scenario/scenario.js'
 import type { StructurePart } from './document.js'
 import type { JobOptions, Progress } from './options.js'
 import { runDefaults } from './run-defaults.js'
-import { finiteStructurePart } from './structure-part.js'
+import { countableStructurePart, finiteStructurePart } from './structure-part.js'
 
 /** What every job stands on: the model, its states where they can be listed, and what is known of its long run. */
 export interface Ground {
   readonly scenario: Scenario
   readonly model: Model
   readonly part: StructurePart
+  /** What theorems say of a model that is unbounded. */
+  readonly countable?: Classification
   /** Absent where the model is unbounded. */
   readonly finite?: { readonly chain: Chain; readonly joined: JoinedArcs; readonly structure: Structure }
 }
@@ -30,8 +34,15 @@ export async function layGround(
   onProgress({ stage: 'reading' })
   const scenario = await readScenario(file, { overrides: options.set })
   const model = compile(scenario)
-  const chain = enumerate(model, options, onProgress)
-  if (chain === undefined) return { scenario, model, part: openPart(model) }
+  let chain = enumerate(model, options, runDefaults.statesBeforeUnbounded, onProgress)
+  if (chain === undefined && model.kind === 'variables') {
+    onProgress({ stage: 'structure' })
+    const countable = classifyCountable(model)
+    // Where no theorem speaks, guards may still bound the model further out.
+    if (countable.grade === 'open') chain = enumerate(model, options, runDefaults.statesWhereOpen, onProgress)
+    if (chain === undefined) return { scenario, model, countable, part: countableStructurePart(countable) }
+  }
+  if (chain === undefined) throw new Error('a table is always finite')
   onProgress({ stage: 'structure' })
   const joined = joinArcs(chain)
   const structure = structureOf(chain, joined)
@@ -39,14 +50,18 @@ export async function layGround(
 }
 
 /**
- * The chain, or undefined where a variable has no bound and its values go on beyond the first
- * `statesBeforeUnbounded` states. A model whose variables all have bounds is finite, so reaching the cap there is
+ * The chain, or undefined where a variable has no bound and its values go on beyond the first so many states. A model whose variables all have bounds is finite, so reaching the cap there is
  * the user's limit and ends the job.
  */
-function enumerate(model: Model, options: JobOptions, onProgress: (progress: Progress) => void): Chain | undefined {
+function enumerate(
+  model: Model,
+  options: JobOptions,
+  unboundedCap: number,
+  onProgress: (progress: Progress) => void,
+): Chain | undefined {
   const bounded = model.kind === 'table' || (model.lower.every(Number.isFinite) && model.upper.every(Number.isFinite))
   const cap = options.maxStates ?? runDefaults.maxStates
-  const maxStates = bounded ? cap : Math.min(cap, runDefaults.statesBeforeUnbounded)
+  const maxStates = bounded ? cap : Math.min(cap, unboundedCap)
   try {
     return explore(model, {
       maxStates,
@@ -58,24 +73,3 @@ function enumerate(model: Model, options: JobOptions, onProgress: (progress: Pro
     throw error
   }
 }
-
-/** An unbounded model whose class no theorem here decides: open, never guessed. */
-function openPart(model: Model): StructurePart {
-  const unbounded = model.kind === 'table' ? [] : unboundedElements(model.elements, model.lower, model.upper)
-  return {
-    states: null,
-    transitions: null,
-    recurrence: 'undetermined',
-    grade: 'open',
-    basis: `${list(unbounded)} ${unbounded.length === 1 ? 'has' : 'have'} no bound, and nothing here decides whether the model settles`,
-    closedClasses: [],
-    transientStates: null,
-    meanTimeToSettle: null,
-  }
-}
-
-const unboundedElements = (elements: readonly string[], lower: Float64Array, upper: Float64Array): string[] =>
-  elements.filter((_, i) => !Number.isFinite(lower[i]) || !Number.isFinite(upper[i])).map((name) => `\`${name}\``)
-
-const list = (names: readonly string[]): string =>
-  names.length < 2 ? names.join('') : `${names.slice(0, -1).join(', ')} and ${names[names.length - 1]}`

@@ -15,5 +15,7 @@ export const runDefaults = {
    * States that are enumerated of a model with a variable without bound, to see whether guards bound it after all,
    * before it is treated as unbounded.
    */
-  statesBeforeUnbounded: 200_000,
+  statesBeforeUnbounded: 50_000,
+  /** The same where no theorem decides the class of the unbounded model. */
+  statesWhereOpen: 500_000,
 } as const

@@ -37,7 +37,15 @@ export async function runSimulation(
   })
   const all = estimatesOf(model, observations, request.confidence)
   // Without a known steady state there is no long-run mean that an interval could be about.
-  const estimates = part.recurrence === 'positive recurrent' ? all : withoutIntervals(all)
+  const estimates =
+    part.recurrence === 'positive recurrent'
+      ? all
+      : withoutIntervals(
+          all,
+          part.recurrence === 'undetermined'
+            ? 'the model is not known to have a long-run value'
+            : 'the model has no long-run value',
+        )
   return {
     observations,
     estimates,
@@ -55,9 +63,10 @@ export async function runSimulation(
   }
 }
 
-const noLongRun = 'the model is not known to have a long-run value'
-
-function withoutIntervals(estimates: Readonly<Record<string, AnyEstimate>>): Record<string, AnyEstimate> {
+function withoutIntervals(
+  estimates: Readonly<Record<string, AnyEstimate>>,
+  noLongRun: string,
+): Record<string, AnyEstimate> {
   const bare = ({ estimate, confidence, method }: Extract<AnyEstimate, { estimate: number }>) => ({
     estimate,
     confidence,

@@ -1,11 +1,11 @@
-import { exactAnswer } from './check.js'
+import { causesOf, exactAnswer, isExpected } from './check.js'
 import { withDeadline } from './deadline.js'
 import { exactPart } from './exact-part.js'
 import { layGround } from './ground.js'
 import type { JobResult } from './job-result.js'
 import type { JobOptions } from './options.js'
 import { detailsOf, scenarioPart } from './scenario-part.js'
-import { explain, openClass } from './sentences.js'
+import { explain } from './sentences.js'
 
 /** Exact long-run measures with error bounds. */
 export async function solve(file: string, options: JobOptions = {}): Promise<JobResult> {
@@ -14,16 +14,17 @@ export async function solve(file: string, options: JobOptions = {}): Promise<Job
   const { scenario, part, finite } = ground
   const exact = exactAnswer(ground, options, report)
   const open = part.recurrence === 'undetermined'
-  const met = scenario.expect === undefined || open || scenario.expect === part.recurrence
+  const findings = causesOf(ground)
+  const met = scenario.expect === undefined || open || isExpected(scenario.expect, part)
   return {
     document: {
       format: 'stillmark/solve/1',
       scenario: scenarioPart(scenario),
       structure: part,
       ...exactPart(exact, () => explain(part), options.states ? finite?.chain : undefined),
-      ...(open ? { findings: [openClass(part)] } : {}),
+      ...(findings.length === 0 ? {} : { findings }),
     },
     exitStatus: open ? 3 : exact !== undefined && met ? 0 : 1,
-    details: detailsOf(scenario, open ? openClass(part).next : 'nothing'),
+    details: detailsOf(scenario, findings[0]?.next ?? 'nothing'),
   }
 }

@@ -1,5 +1,7 @@
 import type { Chain, Structure } from '../chain/chain.js'
 import { shownState } from '../chain/shown-state.js'
+import { toText } from '../numbers/fraction.js'
+import type { Classification } from '../recurrence/classification.js'
 import type { StructurePart } from './document.js'
 
 /** States of a class that are listed by name or value. */
@@ -25,6 +27,40 @@ export function finiteStructurePart(chain: Chain, structure: Structure): Structu
     })),
     transientStates: structure.transientStates.length,
     meanTimeToSettle: structure.meanTimeToSettle,
+  }
+}
+
+/** An unbounded model as the document shows it, with what its classification rests on. */
+export function countableStructurePart(countable: Classification): StructurePart {
+  const { recurrence, grade, basis, checked, explosive, closedClasses, drift, growth } = countable
+  return {
+    states: null,
+    transitions: null,
+    recurrence,
+    grade,
+    basis,
+    ...(checked.length === 0 ? {} : { checked }),
+    closedClasses: closedClasses.map(({ size, period }) => ({
+      size,
+      period,
+      reachedWith: closedClasses.length === 1 && recurrence !== 'mixed' ? 1 : null,
+    })),
+    transientStates: null,
+    meanTimeToSettle: null,
+    ...(explosive === undefined ? {} : { explosive }),
+    ...(drift === undefined
+      ? {}
+      : {
+          drift: drift.map(({ of, where, value, exact }) => ({
+            of,
+            where,
+            value,
+            ...(exact === undefined ? {} : { exact: toText(exact) }),
+          })),
+        }),
+    ...(growth === undefined
+      ? {}
+      : { growth: growth.map(({ name, value, means, source }) => ({ name, value, means, source })) }),
   }
 }
 
