@@ -1,6 +1,7 @@
 import type { StillmarkDocument } from '../jobs/document.js'
 import type { JobDetails } from '../jobs/job-result.js'
 import { amount, countInWords, inUnits, significant, trimZeros } from './digits.js'
+import { isMet } from './next-action.js'
 import { plainText } from './plain-text.js'
 
 /** The lines under the table: what the verdict rests on. Label and text. */
@@ -26,7 +27,7 @@ export function factLines(
         .slice(0, 5)
         .map(
           ({ reachedWith, size }) =>
-            `${trimZeros(significant(reachedWith, 4))} in ${size === null ? 'an endless' : size === 1 ? 'a single-state' : `a ${size.toLocaleString('en-US')}-state`} class`,
+            `${reachedWith === null ? 'unknown' : trimZeros(significant(reachedWith, 4))} in ${size === null ? 'an endless' : size === 1 ? 'a single-state' : `a ${size.toLocaleString('en-US')}-state`} class`,
         )
       lines.push(['ends', `with probability ${shown.join(', ')}${structure.closedClasses.length > 5 ? ', …' : ''}`])
     }
@@ -38,7 +39,7 @@ export function factLines(
     const found =
       structure.recurrence === 'undetermined'
         ? 'that stays open'
-        : details.expect === structure.recurrence || (details.expect === 'explosive' && structure.explosive === true)
+        : isMet(details.expect, structure)
           ? 'and so it is'
           : `but it is ${structure.recurrence}`
     lines.push(['expected', `${plainText(details.expect)}, ${found}`])

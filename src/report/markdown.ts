@@ -1,7 +1,9 @@
 import type { JobResult } from '../jobs/job-result.js'
+import { distributionTexts } from './distribution-lines.js'
 import { factLines } from './facts.js'
+import { nextAction } from './next-action.js'
 import { plainText } from './plain-text.js'
-import { resultRows } from './result-rows.js'
+import { resultRows, whyNoIntervals } from './result-rows.js'
 import { verdictSentence } from './verdict-sentence.js'
 
 /** What ran: for the sign-off part of a report. */
@@ -11,7 +13,8 @@ export interface Versions {
 }
 
 /** A result as Markdown that reads well in a code review. The same result gives the same text, but for the timing. */
-export function toMarkdown({ document, details }: JobResult, versions: Versions): string {
+export function toMarkdown(result: JobResult, versions: Versions): string {
+  const { document, details } = result
   const { scenario, comparison, simulation, structure, exact } = document
   const parts: string[] = [`# ${escaped(scenario.title)}`]
   const sentence = verdictSentence(document, details)
@@ -34,14 +37,20 @@ export function toMarkdown({ document, details }: JobResult, versions: Versions)
       ),
     )
   }
-  for (const finding of comparison?.findings ?? document.findings ?? []) {
+  const reason = whyNoIntervals(document)
+  if (reason !== undefined) parts.push(`No intervals: ${escaped(reason)}.`)
+  for (const { heading, lines } of distributionTexts(document))
+    parts.push(escaped(heading), fenced(lines.join('\n'), 'text'))
+  const findings = comparison?.findings ?? document.findings ?? []
+  if (findings.length > 0) parts.push('## Findings')
+  for (const finding of findings) {
     parts.push(
       `### ${escaped(finding.says)}`,
       escaped(finding.evidence),
       `Next: ${escaped(finding.next)} (\`${finding.code}\`)`,
     )
   }
-  parts.push(`Next: ${escaped(details.next)}${details.next.endsWith('.') ? '' : '.'}`)
+  parts.push(`**Next:** ${escaped(nextAction(result))}`)
   parts.push(
     '## What it rests on',
     table(
@@ -90,7 +99,7 @@ export function toMarkdown({ document, details }: JobResult, versions: Versions)
     '## Cautions',
     'A simulation that agrees with its model says nothing about whether the model fits the plant: rates, independence and rules are the modeller’s. Where people can be hurt, local codes and licensed practice decide.',
     '## Scenario',
-    fenced(details.scenarioText),
+    fenced(details.scenarioText, 'yaml'),
   )
   return `${parts.join('\n\n')}\n`
 }
@@ -110,12 +119,13 @@ function escaped(text: string): string {
   return plainText(text, 2000)
     .replace(/[\\`*_{}[\]<>|~#]/g, (mark) => `\\${mark}`)
     .replace(/&/g, '&amp;')
+    .replace(/:\/\/|www\./gi, (start) => `${start.slice(0, -1)}\\${start.slice(-1)}`)
 }
 
 /** A block that its content can't end: its fence is longer than any run of backticks in it. */
-function fenced(text: string): string {
+function fenced(text: string, language: 'yaml' | 'text'): string {
   const longest = Math.max(2, ...(text.match(/`+/g) ?? []).map((run) => run.length))
   const fence = '`'.repeat(longest + 1)
   const clean = text.replace(/\r\n?/g, '\n').replace(/(?![\t\n])\p{Cc}|[\u202A-\u202E\u2066-\u2069]/gu, '')
-  return `${fence}yaml\n${clean.trimEnd()}\n${fence}`
+  return `${fence}${language}\n${clean.trimEnd()}\n${fence}`
 }

@@ -4,6 +4,7 @@ import type { JobResult } from '../jobs/job-result.js'
 import { boundDigits } from './digits.js'
 import { distributionTexts } from './distribution-lines.js'
 import { factLines } from './facts.js'
+import { nextAction } from './next-action.js'
 import { plainText } from './plain-text.js'
 import { type ResultRow, resultRows, whyNoIntervals } from './result-rows.js'
 import { verdictSentence } from './verdict-sentence.js'
@@ -22,8 +23,8 @@ const unpainted: Paint = { strong: same, quiet: same, good: same, bad: same, ope
 
 const widest = 100
 const mostFindings = 4
-/** Longest name of a measure that a table shows whole. */
-const widestName = 30
+/** A table that is too wide cuts the names of its measures, but not further than this. */
+const leastName = 16
 
 /** A result as lines of text: words first, then numbers, then what to do. */
 export function terminalText(result: JobResult, columns = 80, paint: Paint = unpainted): string {
@@ -56,8 +57,7 @@ export function terminalText(result: JobResult, columns = 80, paint: Paint = unp
   }
   if (findings.length > mostFindings)
     lines.push('', `  and ${findings.length - mostFindings} more: --json and --report list them all`)
-  const next = details.next === 'nothing' ? 'nothing.' : plainText(details.next, 400)
-  lines.push('', ...wrapped(`Next: ${next}`, width, 0))
+  lines.push('', ...wrapped(`Next: ${nextAction(result)}`, width, 0))
   return `${lines.join('\n')}\n`
 }
 
@@ -71,7 +71,7 @@ interface Column {
 
 function columnsOf({ format, exact }: StillmarkDocument): readonly Column[] {
   const errors = exact?.measures ?? {}
-  const measure: Column = { head: 'measure', of: (row) => plainText(row.measure, widestName), right: false }
+  const measure: Column = { head: 'measure', of: (row) => row.measure, right: false }
   const exactly: Column = { head: 'exact', of: (row) => row.exact, right: true }
   if (format === 'stillmark/solve/1') {
     const bound = (row: ResultRow) =>
@@ -89,10 +89,18 @@ function columnsOf({ format, exact }: StillmarkDocument): readonly Column[] {
   ]
 }
 
+const widthOf = ({ head, of }: Column, rows: readonly ResultRow[]): number =>
+  Math.max(stringWidth(head), ...rows.map((row) => stringWidth(of(row))))
+
+const tableWidth = (columns: readonly Column[], rows: readonly ResultRow[]): number =>
+  columns.reduce((total, column) => total + (column.close ? 1 : 2) + widthOf(column, rows), 0)
+
 /** Columns in which no row says anything are left out; a note that does not fit beside its row stands below it. */
 function table(rows: readonly ResultRow[], document: StillmarkDocument, width: number, paint: Paint): string[] {
-  const columns = columnsOf(document).filter(({ of }, i) => i === 0 || rows.some((row) => of(row) !== ''))
-  const widths = columns.map(({ head, of }) => Math.max(stringWidth(head), ...rows.map((row) => stringWidth(of(row)))))
+  const all = columnsOf(document).filter(({ of }, i) => i === 0 || rows.some((row) => of(row) !== ''))
+  const names = Math.max(leastName, widthOf(all[0], rows) - Math.max(0, tableWidth(all, rows) - width))
+  const columns = [{ ...all[0], of: (row: ResultRow) => plainText(row.measure, names) }, ...all.slice(1)]
+  const widths = columns.map((column) => widthOf(column, rows))
   const line = (cells: readonly string[], painted: (text: string) => string = same): string =>
     cells
       .map((text, i) => {

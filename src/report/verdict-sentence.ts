@@ -1,13 +1,14 @@
 import type { StillmarkDocument } from '../jobs/document.js'
 import type { JobDetails } from '../jobs/job-result.js'
+import { isMet } from './next-action.js'
 
 /** The answer in a sentence or two: what a reader who stops there takes along. */
 export function verdictSentence(document: StillmarkDocument, { expect }: Pick<JobDetails, 'expect'>): string {
   const sentence = document.comparison === undefined ? structureSentence(document) : comparisonSentence(document)
   const { structure } = document
   if (expect === undefined || structure === undefined || structure.recurrence === 'undetermined') return sentence
-  const met = expect === structure.recurrence || (expect === 'explosive' && structure.explosive === true)
-  if (!met) return `The model is ${structure.recurrence}, not ${expect} as the file expects. ${sentence}`
+  if (!isMet(expect, structure))
+    return `The model is ${structure.recurrence}, not ${expect} as the file expects. ${sentence}`
   return expect === 'positive recurrent' ? sentence : `${sentence} That is what the file expects.`
 }
 
@@ -15,7 +16,7 @@ export function verdictSentence(document: StillmarkDocument, { expect }: Pick<Jo
 function structureSentence({ format, structure, exact, simulation }: StillmarkDocument): string {
   if (structure === undefined) return ''
   const { recurrence, closedClasses } = structure
-  const reached = closedClasses.filter((each) => each.reachedWith > 0).length
+  const reached = closedClasses.filter((each) => (each.reachedWith ?? 0) > 0).length
   const values =
     exact === undefined || exact === null || Object.keys(exact.measures).length === 0
       ? simulation === undefined
