@@ -26,16 +26,7 @@ import {
   type PhaseArcs,
   staysInRange,
 } from './phase-process.js'
-import {
-  addRationals,
-  constantIn,
-  expansionOf,
-  multiplyRationals,
-  orderOf,
-  type Rational,
-  rationalOf,
-  rationalSign,
-} from './rational.js'
+import { addRationals, constantIn, expansionOf, orderOf, type Rational } from './rational.js'
 
 /** A set of phases of an end that communicate far out, and what the level does while the process is in it. */
 export interface EndClass {
@@ -116,7 +107,13 @@ function onlyOut(
   members: readonly number[],
   inside: ReadonlyMap<number, number>,
 ): Fate {
-  const shares = sharesOf(scaled(arcs, inside, 0).limit)
+  const shares = sharesOf(
+    scaled(
+      arcs,
+      inside,
+      arcs.map(() => 0),
+    ).limit,
+  )
   return {
     fate: 'escapes',
     theorem: 'counters that only grow: no state is met again (Chung 1967, I.4, from memory)',
@@ -172,16 +169,16 @@ const shown = (value: Fraction): string =>
       : `${value.numerator}/${value.denominator}`
     : `${Number(toNumber(value).toPrecision(6))}`
 
-/** Rates divided by n^order, expanded to limit + first/n + …. */
+/** Rates divided by the power of n of their phase, expanded to limit + first/n + …. */
 function scaled(
   arcs: readonly (readonly EndArc[])[],
   inside: ReadonlyMap<number, number>,
-  order: number,
+  orders: readonly number[],
 ): { limit: PhaseArcs; first: PhaseArcs } {
   const part = (k: 0 | 1): PhaseArcs =>
-    arcs.map((row) =>
+    arcs.map((row, phase) =>
       row.flatMap(({ to, jump, rate }) => {
-        const coefficient = expansionOf(rate, order, 2)[k]
+        const coefficient = expansionOf(rate, orders[phase], 2)[k]
         if (coefficient.numerator === 0n) return []
         return [{ to: inside.get(to as number) as number, jump, rate: coefficient }]
       }),
@@ -219,11 +216,11 @@ function doubleDrift(arcs: PhaseArcs): { value: number; bound: number } {
 }
 
 /**
- * Rates that tend to constants, after division by the power n^K of the largest (a change of clock that leaves the
- * embedded chain as it is).
+ * Rates that tend to constants, after division by the power n^K of the largest in each phase (a change of clock that
+ * leaves the embedded chain as it is).
  *
  * Drift of the limit process not 0: Foster 1953 with the function level + corrector(phase), whose drift goes to
- * n^K × the mean drift in every phase; with constant rates this is Neuts 1981, theorem 1.7.1 and 3.1.1 (from memory).
+ * n^K × the mean drift in every phase (where K < 0, with a power of that function); with constant rates this is Neuts 1981, theorem 1.7.1 and 3.1.1 (from memory).
  * Drift 0: Lamperti 1960 and 1963, with phases Georgiou and Wade 2014 (from memory): with 2c/σ² = w the process escapes
  * for w > 1, and for K = 0 comes back in finite mean time if and only if w < -1.
  */
@@ -234,8 +231,9 @@ function asymptoticFate(
   homogeneous: boolean,
   time: 'continuous' | 'discrete',
 ): Fate {
-  const order = Math.max(...arcs.flat().map(({ rate }) => orderOf(rate)))
-  const { limit, first } = scaled(arcs, inside, order)
+  const orders = arcs.map((row) => Math.max(...row.map(({ rate }) => orderOf(rate))))
+  const { limit, first } = scaled(arcs, inside, orders)
+  const [least, order] = [Math.min(...orders), Math.max(...orders)]
   const cores = closedCores(limit)
   const phases = `${members.length} ${members.length === 1 ? 'phase' : 'phases'}`
   const basis = homogeneous
@@ -254,16 +252,10 @@ function asymptoticFate(
     }
   }
   if (drifts.some((each) => each?.sign !== drift.sign) || (cores.length > 1 && drift.sign === 0)) {
-    return (
-      pulledIn(arcs, inside, basis) ?? {
-        fate: 'unknown',
-        theorem: '',
-        checked: ['the phases fall apart in the limit of large counts'],
-      }
-    )
+    return { fate: 'unknown', theorem: '', checked: ['the phases fall apart in the limit of large counts'] }
   }
   const perTime =
-    order === 0 && cores.length === 1
+    order === 0 && least === 0 && cores.length === 1
       ? { drift: { value: drift.value, ...(drift.exact === undefined ? {} : { exact: drift.exact }) } }
       : {}
   const theorem = homogeneous ? 'Neuts 1981' : 'Foster 1953'
@@ -271,7 +263,7 @@ function asymptoticFate(
     return { fate: 'soon', theorem, checked: [basis, 'the mean drift is inward'], ...perTime }
   }
   if (drift.sign > 0) {
-    const explosive = time === 'continuous' && order >= 2
+    const explosive = time === 'continuous' && least >= 2
     return {
       fate: 'escapes',
       theorem: homogeneous ? theorem : 'Foster 1953 (transience: Meyn and Tweedie 1993, 8.4, from memory)',
@@ -280,7 +272,15 @@ function asymptoticFate(
       ...perTime,
     }
   }
-  return balancedFate(limit, first, cores[0].length === members.length, order, homogeneous, basis, perTime)
+  return balancedFate(
+    limit,
+    first,
+    cores[0].length === members.length,
+    least === order ? order : undefined,
+    homogeneous,
+    basis,
+    perTime,
+  )
 }
 
 /** The closed classes of the limit process. */
@@ -294,58 +294,6 @@ function closedCores(limit: PhaseArcs): number[][] {
   return [...open.keys()]
     .filter((component) => open[component] === 0)
     .map((component) => [...limit.keys()].filter((phase) => componentOf[phase] === component))
-}
-
-/**
- * Foster 1953 with level + t × (mean time until a phase is entered whose inward drift grows with the level): where the
- * other phases have constant rates, a large t makes the drift negative in all of them. Checked in fractions.
- */
-function pulledIn(
-  arcs: readonly (readonly EndArc[])[],
-  inside: ReadonlyMap<number, number>,
-  basis: string,
-): Fate | undefined {
-  const drifts = arcs.map((row) =>
-    row.map(({ rate, jump }) => multiplyRationals(rate, rationalOf(fraction(jump), 1))).reduce(addRationals),
-  )
-  const strong = drifts.map((drift) => orderOf(drift) >= 1 && rationalSign(drift)?.sign === -1)
-  const weak = [...strong.keys()].filter((phase) => !strong[phase])
-  if (weak.length === arcs.length || weak.length > exactPhases) return undefined
-  if (weak.some((phase) => arcs[phase].some(({ rate }) => constantIn(rate) === undefined))) return undefined
-  const position = new Map(weak.map((phase, k) => [phase, k + 1] as const))
-  // The strong phases are joined into phase 0, which leads nowhere: "mean drift" -1 elsewhere makes the correctors mean times.
-  const joined: PhaseArcs = [
-    [],
-    ...weak.map((phase) =>
-      arcs[phase].map(({ to, rate }) => ({
-        to: position.get(inside.get(to as number) as number) ?? 0,
-        jump: 0,
-        rate: constantIn(rate) as Fraction,
-      })),
-    ),
-  ]
-  if (closedCores(joined).length !== 1) return undefined
-  const times = correctors(joined, negate(one))
-  const most = weak.reduce(
-    (high, phase) =>
-      compare(constantIn(drifts[phase]) as Fraction, high) > 0 ? (constantIn(drifts[phase]) as Fraction) : high,
-    zero,
-  )
-  const factor = add(most, one)
-  const height = (phase: number): Fraction => multiply(factor, times[position.get(phase) ?? 0])
-  const inward = arcs.every((row, phase) => {
-    const change = row.map(({ to, rate, jump }) => {
-      const step = add(fraction(jump), subtract(height(inside.get(to as number) as number), height(phase)))
-      return multiplyRationals(rate, rationalOf(step, 1))
-    })
-    return rationalSign(addRationals(change.reduce(addRationals), rationalOf(fraction(1, 2), 1)))?.sign === -1
-  })
-  if (!inward) return undefined
-  return {
-    fate: 'soon',
-    theorem: 'Foster 1953',
-    checked: [basis, 'the level plus a function of the phase has a drift below -1/2 in every phase beyond a level'],
-  }
 }
 
 function signedDrift(arcs: PhaseArcs): { sign: -1 | 0 | 1; value: number; exact?: Fraction } | undefined {
@@ -362,7 +310,7 @@ function balancedFate(
   limit: PhaseArcs,
   first: PhaseArcs,
   irreducible: boolean,
-  order: number,
+  order: number | undefined,
   homogeneous: boolean,
   basis: string,
   perTime: Pick<Fate, 'drift'>,
@@ -403,7 +351,10 @@ function balancedFate(
   const above = compare(weight, one)
   const edge = above === 0 || compare(weight, negate(one)) === 0
   if (edge && (several || order !== 0)) return unknown(`the drift is exactly at the edge of Lamperti's criterion`)
-  if (above > 0) return { fate: 'escapes', theorem, checked: lamperti, diffusion, ...perTime }
+  // With another clock the process is a Bessel process only in that clock's time: no law for the model's own follows.
+  if (above > 0)
+    return { fate: 'escapes', theorem, checked: lamperti, ...(order === 0 ? { diffusion } : {}), ...perTime }
+  if (order === undefined) return unknown('the drift is 0 in the limit and some phases are faster than others there')
   if (order === 0) {
     return {
       fate: compare(weight, negate(one)) < 0 ? 'soon' : 'late',

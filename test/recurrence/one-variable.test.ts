@@ -243,6 +243,45 @@ describe('jumps of any size and phases', () => {
     })
   })
 
+  // Drift 3/n at variance 2 in two phases that change nothing: growth like a Bessel process of dimension 1 + 3, whose
+  // mean is √(2·2) Γ(5/2)/Γ(2) = 2·1.3293403881791370; the same rates times n run on another clock, where no such law holds.
+  const bessel = (scale: string) =>
+    modelOf(`
+    state: { n: { from: 0, start: 0 }, idle: { from: 0, to: 1, start: 0 } }
+    transitions:
+      up: { rate: "(1 + 3/(n + 1))*${scale}", then: { n: n + 1 } }
+      down: { when: n > 0, rate: "${scale}", then: { n: n - 1 } }
+      turn: { rate: "${scale}", then: { idle: 1 - idle } }
+  `)
+  test('growth with phases is told on the clock of the model alone', () => {
+    const { growth } = classifyCountable(bessel('1'), plain)
+    expect(growth?.[0].name).toBe('growth_n')
+    expect(growth?.[0].value).toBeCloseTo(2 * 1.329340388179137, 12)
+    expect(classifyCountable(bessel('(n + 1)'), plain)).toMatchObject({ recurrence: 'transient', grade: 'proved' })
+    expect(classifyCountable(bessel('(n + 1)'), plain).growth).toBeUndefined()
+  })
+
+  // Callers who find the line busy try again later, each on their own: steady if and only if the line alone would be
+  // (Falin and Templeton 1997, from memory). While the line is free, retrials grow with the number that wait.
+  const retrials = (a: string) =>
+    modelOf(`
+    state: { busy: { from: 0, to: 1, start: 0 }, waiting: { from: 0, start: 0 } }
+    transitions:
+      take: { when: busy == 0, rate: ${a}, then: { busy: 1 } }
+      put_off: { when: busy == 1, rate: ${a}, then: { waiting: waiting + 1 } }
+      retry: { when: busy == 0, rate: waiting/3, then: { busy: 1, waiting: waiting - 1 } }
+      done: { when: busy == 1, rate: 1, then: { busy: 0 } }
+  `)
+  test.each([
+    ['0.99', 'positive recurrent', 'proved'],
+    ['1.01', 'transient', 'proved'],
+  ])('retrials, arrivals at %s against 1: %s', (a, recurrence, grade) => {
+    expect(classifyCountable(retrials(a), plain)).toMatchObject({ recurrence, grade })
+  })
+  test('retrials at exact balance are not claimed to be steady', () => {
+    expect(classifyCountable(retrials('1'), plain).recurrence).not.toBe('positive recurrent')
+  })
+
   // Jumps of +2 and -1: drift c/n, variance 2·4/3·… by hand: up 1/3 (+2), down 2/3 (-1): σ² = 4/3 + 2/3 = 2.
   // Down with 2/3 + d/n: drift -3d/n (up loses d: 2·(-d) - d): 2c/σ² = -3d: positive for d > 1/3.
   test.each([
