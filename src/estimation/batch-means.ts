@@ -6,9 +6,10 @@ import { joinBatches, meansOf } from './joined-batches.js'
 /**
  * Interval for a long-run mean from replications that are cut into batches.
  *
- * Replications are independent of one another. Within each, adjacent batches are joined until von Neumann's test no
- * longer sees them hang together, and then fourfold once more (see `joinBatches`); if that leaves none, whole
- * replications count. The interval is Student's on what is left.
+ * Replications are independent of one another, and from ten on each counts as a whole. Where they are fewer, adjacent
+ * batches within each are joined until von Neumann's test no longer sees them hang together, and then several times once
+ * more (see `joinBatches`); if that leaves one, whole replications count. The interval is Student's on what is left.
+ * It leaves out the bias of the start (the warm-up's part) and skewness, which costs coverage where runs are short.
  * Source: Schmeiser 1982; Law and Carson 1979 (both from memory).
  *
  * @param batchMeans R × B, row-major, equally long, warm-up already deleted; own unit
@@ -92,8 +93,12 @@ export function methodOf(replications: number, batches: number): string {
   return batches === 1 ? `replication means, ${runs}` : `batch means, ${runs} × ${batches} batches`
 }
 
+export const correlatedBatches =
+  'the batches of the one replication hang together: run longer, or with more replications'
+
+/** Why no honest interval can be made from these means. */
 export function reasonAgainst(means: Float64Array, correlated: boolean): string | undefined {
-  if (correlated) return 'the batches of the one replication hang together: run longer, or with more replications'
+  if (correlated) return correlatedBatches
   if (means.length < 2) return 'one observation alone has no interval: run more replications'
   const [first] = means
   if ((first === 0 || first === 1) && means.every((x) => x === first)) {

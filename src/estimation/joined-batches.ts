@@ -14,17 +14,29 @@ export interface Joined {
 const level = 0.2
 /**
  * Batches that pass are made so many times longer still. Correlation of neighbours falls in proportion to their
- * length, so what the test may have missed is divided by it.
+ * length, so what the test may have missed is divided by it. A lone replication has too few batches for the eightfold.
  */
-const safety = 4
-/** Fewer batches in all make an interval of little worth, but never a wrong one. */
+const safety = 8
+const safetyAlone = 4
+/** Fewer batches a replication say too little of their own correlation. */
 const fewestToTest = 8
+/**
+ * From so many replications on each counts as a whole, whatever its batches look like: Student's quantile gains little
+ * beyond 9 degrees of freedom, and independence by construction beats independence by test. On M/M/1 waits at 80 % load
+ * that covers 0.3 to 0.9 points more often than batches that passed the test.
+ */
+export const enoughReplications = 10
 
 /**
+ * The rule of joining, measured (95 %, stationary AR(1) with correlation 1/2 between points, 32 batches of 4 points): 2, 4
+ * and 8 replications cover 94.0, 94.1 and 94.5 %, one alone 93 %. Repeated testing does no harm: it can only join more.
+ *
  * @param series what the batches are of, each R × B, row-major: for a ratio its two sides combined
  * @param batches B
  */
 export function joinBatches(series: Float64Array, replications: number, batches: number): Joined {
+  if (replications >= enoughReplications) return { batches: 1, correlated: false }
+  const times = replications === 1 ? safetyAlone : safety
   let test: BatchTest | undefined
   let left = batches
   let means = series
@@ -32,14 +44,14 @@ export function joinBatches(series: Float64Array, replications: number, batches:
     test = batchTest(means, replications, left)
     // What does not vary is not correlated.
     if (test === undefined || test.pValue > level) {
-      const kept = Math.max(1, Math.floor(left / safety))
+      const kept = Math.max(1, Math.floor(left / times))
       return { batches: replications === 1 ? Math.max(2, kept) : kept, test, correlated: false }
     }
     if (left % 2 !== 0) break
     left /= 2
     means = pairs(means)
   }
-  return { batches: 1, test, correlated: replications === 1 }
+  return { batches: 1, test, correlated: replications === 1 && test !== undefined }
 }
 
 /** Means of neighbours, two by two; an even number of them a replication. */

@@ -1,3 +1,5 @@
+import { studentTail } from '../numbers/distributions.js'
+
 /** Where a series is cut, and whether that is to be believed. */
 export interface WarmUpCut {
   /** Observations to delete from the front of the series. */
@@ -43,30 +45,36 @@ export function marginalStandardErrorCut(series: Float64Array, batch = mserBatch
   return { cut, settled: true, why: `MSER-${batch} deletes ${cut} of ${series.length} observations` }
 }
 
-/** Index of the least criterion, going from the back with a running mean and sum of squares (Welford 1962). */
+/** Index of the least criterion, the first of equals, and whether the series varies at all. */
 function minimizer(means: Float64Array): { readonly best: number; readonly constant: boolean } {
   const n = means.length
-  let mean = 0
-  let squares = 0
-  let best = 0
-  let least = Number.POSITIVE_INFINITY
-  let varies = false
+  const criterion = marginalStandardErrors(means)
   // The last few leave too little to judge: the criterion falls to 0 there of itself.
   const last = n - Math.min(5, Math.floor(n / 4))
+  let best = last
+  for (let d = last - 1; d >= 0; d--) if (criterion[d] <= criterion[best]) best = d
+  return { best, constant: criterion[0] === 0 }
+}
+
+/**
+ * Σ_{i>=d}(x_i - mean_d)² / (n - d)² for every d from 0 to n - 1, from the back with a running mean and sum of squares
+ * (Welford 1962). The last one is 0.
+ */
+export function marginalStandardErrors(means: Float64Array): Float64Array {
+  const n = means.length
+  const criterion = new Float64Array(n)
+  const shift = means[n - 1] // taken off first: a large mean costs the squares their digits
+  let mean = 0
+  let squares = 0
   for (let d = n - 1; d >= 0; d--) {
     const left = n - d
-    const step = means[d] - mean
+    const value = means[d] - shift
+    const step = value - mean
     mean += step / left
-    squares += step * (means[d] - mean)
-    if (squares > 0) varies = true
-    if (d > last) continue
-    const criterion = squares / left ** 2
-    if (criterion <= least) {
-      least = criterion
-      best = d
-    }
+    squares += step * (value - mean)
+    criterion[d] = squares / left ** 2
   }
-  return { best, constant: !varies }
+  return criterion
 }
 
 /**
@@ -86,25 +94,32 @@ export function warmUpCut(series: Float64Array, replications: number): WarmUpCut
   }
   const found = marginalStandardErrorCut(average)
   if (!found.settled || replications < 4) return found
-  const slope = meanSlope(series, replications, points, found.cut)
-  if (slope > growthLimit)
+  if (growsOn(series, average, replications, found.cut))
     return { ...found, settled: false, why: 'the series still rises or falls after its best cut' }
   return found
 }
 
-/** Student's t of the replications' slopes beyond which a series is held to go on growing: one chance in about 2,000. */
-const growthLimit = 4.5
+/** A slope that chance makes so seldom (two-sided) is held for growth. Strict, since the rule is tried on many series. */
+const growthByChance = 5e-4
 
-/** |t| of the mean slope after the cut, over the replications. */
-function meanSlope(series: Float64Array, replications: number, points: number, cut: number): number {
+/**
+ * Whether what is left after the cut rises or falls: the replications' own slopes have a common sign beyond chance, and
+ * the line climbs by more than the averaged points scatter (a deterministic cycle cut off within a round has some slope).
+ */
+function growsOn(series: Float64Array, average: Float64Array, replications: number, cut: number): boolean {
+  const points = average.length
   const n = points - cut
   const middle = (n - 1) / 2
+  const squares = (n * (n * n - 1)) / 12
   const slopes = Array.from({ length: replications }, (_, r) => {
     let slope = 0
     for (let i = 0; i < n; i++) slope += (i - middle) * series[r * points + cut + i]
-    return slope
+    return slope / squares
   })
   const mean = slopes.reduce((a, b) => a + b, 0) / replications
+  const level = average.subarray(cut).reduce((a, b) => a + b, 0) / n
+  const scatter = average.subarray(cut).reduce((sum, x) => sum + (x - level) ** 2, 0) / n
+  if (!((mean * n) ** 2 > scatter)) return false
   const variance = slopes.reduce((sum, slope) => sum + (slope - mean) ** 2, 0) / (replications - 1)
-  return variance > 0 ? Math.abs(mean) / Math.sqrt(variance / replications) : 0
+  return 2 * studentTail(Math.abs(mean) / Math.sqrt(variance / replications), replications - 1) < growthByChance
 }

@@ -1,5 +1,5 @@
 import { studentTail } from '../numbers/distributions.js'
-import { atConfidence, estimateMean } from './batch-means.js'
+import { atConfidence, checked, correlatedBatches, estimateMean } from './batch-means.js'
 import type { Estimate } from './estimate.js'
 
 /** Share of time at each value, as the simulation gives it. */
@@ -22,8 +22,10 @@ export interface QuantileEstimate extends Estimate {
 /**
  * The smallest value v with share(expression <= v) >= level, with an interval by turning round the interval of that
  * share: v is held possible while the interval of share(<= v) reaches up to the level and that of share(< v) down to it.
+ * Values beyond the largest one seen are not considered: a level should leave room for many visits above it.
  *
  * @param level in (0, 1)
+ * @throws not-finite, too-few
  */
 export function estimateQuantile(
   histogram: Histogram,
@@ -32,7 +34,9 @@ export function estimateQuantile(
   confidence: number,
 ): QuantileEstimate {
   const { values } = histogram
-  const shares = values.length === 0 ? [] : cumulativeEstimates(histogram, replications, confidence)
+  if (!(level > 0 && level < 1)) throw new RangeError(`a level of ${level}`)
+  checked(histogram.shares, replications, confidence)
+  const shares = cumulativeEstimates(histogram, replications, confidence)
   // Sums of shares reach 1 only within rounding.
   const reaches = (share: number) => share >= level - 1e-12
   const found = shares.findIndex(({ estimate }) => reaches(estimate))
@@ -40,7 +44,7 @@ export function estimateQuantile(
   const lowest = shares.findIndex(({ estimate, halfWidth }) => reaches(estimate + (halfWidth ?? 0)))
   const highest = shares.findIndex(({ estimate, halfWidth }) => reaches(estimate - (halfWidth ?? 0)))
   const low = values[lowest < 0 ? at : lowest]
-  const high = highest < 0 ? undefined : values[highest]
+  const high = values[highest < 0 ? values.length - 1 : highest]
   const estimate = values[at]
   const pValueOf = (value: number): number => {
     // Below the value there must be less than the level, up to it at least the level.
@@ -56,28 +60,33 @@ export function estimateQuantile(
   const base = {
     estimate,
     confidence,
-    method: `turned interval of the share, ${deciding?.method ?? ''}`,
-    batches: deciding?.batches,
-    batchTest: deciding?.batchTest,
+    method: `turned interval of the share, ${deciding.method}`,
+    batches: deciding.batches,
+    ...(deciding.batchTest === undefined ? {} : { batchTest: deciding.batchTest }),
     low,
     high,
     pValueOf,
   }
-  if (high === undefined) return { ...base, noInterval: "larger values than any seen can't be ruled out: run longer" }
-  const unsure = shares.slice(0, at + 1).some(({ noInterval }) => noInterval?.startsWith('the batches') ?? false)
-  if (unsure || (deciding?.batches ?? 0) < 2)
-    return { ...base, noInterval: deciding?.noInterval ?? 'one observation alone has no interval' }
+  if (shares.slice(0, at + 1).some(({ noInterval }) => noInterval === correlatedBatches)) {
+    return { ...base, noInterval: correlatedBatches }
+  }
+  if (deciding.batches === 1) return { ...base, noInterval: deciding.noInterval }
   return { ...base, halfWidth: Math.max(estimate - low, high - estimate) }
 }
 
-/** P-value of "the share is the level" against a share that is too low (side 1) or too high (side -1). */
+/**
+ * P-value of "the share is the level" against a share that is too low (side 1) or too high (side -1). Where all n batches
+ * show nothing else, chance does that with probability levelⁿ at most (or (1 - level)ⁿ), however slow each one is.
+ */
 function onOneSide(share: Estimate | undefined, level: number, side: 1 | -1): number {
   if (share === undefined) return 1
   const gap = (level - share.estimate) * side
   if (gap <= 1e-12) return 1
-  const { standardError, degreesOfFreedom } = share
-  if (standardError === undefined || degreesOfFreedom === undefined) return share.noInterval === undefined ? 0 : 1
-  return standardError === 0 ? 0 : studentTail(gap / standardError, degreesOfFreedom)
+  const { standardError, degreesOfFreedom, batches, noInterval } = share
+  if (standardError !== undefined && degreesOfFreedom !== undefined) {
+    return standardError === 0 ? 0 : studentTail(gap / standardError, degreesOfFreedom)
+  }
+  return noInterval === correlatedBatches ? 1 : (side === 1 ? 1 - level : level) ** (batches ?? 0)
 }
 
 const lastAtMost = (values: Float64Array, value: number): number => {

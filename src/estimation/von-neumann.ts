@@ -1,4 +1,3 @@
-import { normalTail } from '../numbers/distributions.js'
 import { incompleteBeta } from '../numbers/gamma.js'
 
 export interface BatchTest {
@@ -12,9 +11,9 @@ export interface BatchTest {
  * Tests whether successive batch means hang together: the ratio of the mean square successive difference to the
  * variance, in each replication around that replication's own mean.
  *
- * Source: von Neumann 1941, moments 2 and 4(n - 2)/((n - 1)(n + 1)). One replication alone is judged by the symmetric
- * beta distribution on (0, 4) with these moments (within 0.02 of the exact critical values at 10 batches and less above);
- * the sum over several by the normal one.
+ * Source: von Neumann 1941, moments 2 and 4(n - 2)/((n - 1)(n + 1)); his law is near the symmetric beta distribution on
+ * (0, 4) with these moments, and so is the mean over replications with its own. At the exact 1, 5 and 10 % points of 10
+ * batches that gives 1.02, 5.00 and 9.98 %, of 20 and 40 within 0.003.
  *
  * @param batchMeans R × B, row-major
  * @param batches B, at least 4
@@ -31,12 +30,9 @@ export function batchTest(batchMeans: Float64Array, replications: number, batche
   }
   if (counted === 0) return undefined
   const ratio = sum / counted
-  const variance = (4 * (batches - 2)) / ((batches - 1) * (batches + 1))
-  if (counted === 1) {
-    const shape = (4 / variance - 1) / 2
-    return { ratio, pValue: incompleteBeta(Math.max(ratio, 0) / 4, 1 - ratio / 4, shape, shape) }
-  }
-  return { ratio, pValue: normalTail((2 - ratio) / Math.sqrt(variance / counted)) }
+  const variance = (4 * (batches - 2)) / ((batches - 1) * (batches + 1)) / counted
+  const shape = (4 / variance - 1) / 2
+  return { ratio, pValue: incompleteBeta(ratio / 4, 1 - ratio / 4, shape, shape) }
 }
 
 /** Σ(x_{i+1} - x_i)² / Σ(x_i - mean)²; undefined where the series is constant. */
