@@ -60,8 +60,13 @@ export function readLocated(
     return { faults: [{ code: 'nested-too-deeply', what: 'The file nests too deeply to be read.' }] }
   }
   if (document.errors.length > 0) {
-    return { faults: document.errors.slice(0, 20).map((error) => yamlFault(text, error.pos[0], error.message, spotOf)) }
+    // One wrong bracket makes the parser stumble over all that follows: only its first fault is one of the writer's.
+    const twice = document.errors.filter(isTwice)
+    const first = document.errors.find((error) => !isTwice(error))
+    const told = first === undefined ? twice : [...twice.filter(({ pos }) => pos[0] < first.pos[0]), first]
+    return { faults: told.slice(0, 20).map((error) => yamlFault(text, error.pos[0], error.message, spotOf)) }
   }
+
   const faults: Fault[] = []
   const scalarOf = (node: Scalar, inFlow: boolean): LocatedScalar => {
     const start = node.range?.[0] ?? 0
@@ -172,11 +177,13 @@ function nestingFault(text: string): Fault | undefined {
   return undefined
 }
 
+const isTwice = ({ message }: { readonly message: string }): boolean => /unique/i.test(message)
+
 function yamlFault(text: string, offset: number, message: string, spotOf: (offset: number) => Spot): Fault {
   const where = spotOf(offset)
   const line = text.split('\n', where.line)[where.line - 1] ?? ''
   const plain = message.split('\n')[0].replace(/\.$/, '')
-  const twice = /unique/i.test(plain)
+  const twice = isTwice({ message })
   return {
     code: twice ? 'key-twice' : 'not-yaml',
     where,

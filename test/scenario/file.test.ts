@@ -195,7 +195,8 @@ describe('faults, each at its line and column', () => {
     ['a missing title', variables(t).replace('title: t\n', ''), ['1:1 key-missing']],
     ['a key twice', variables(`${t}\n${t}`), ['8:3 key-twice']],
     ['an alias', variables(t).replace('a: 2', 'a: &x 2, b: *x'), ['4:20 no-aliases', '4:26 no-aliases']],
-    ['no YAML', 'stillmark: 1\n  title: [', ['1:12 not-yaml', '1:12 not-yaml', '2:11 not-yaml']],
+    ['no YAML', 'stillmark: 1\n  title: [', ['1:12 not-yaml']],
+    ['brackets in braces', variables('  t: { rate: list[1], then: {} }'), ['7:18 not-yaml']],
     ['no scenario', '- 1\n- 2', ['1:1 not-a-scenario']],
     ['nothing', '', ['1:1 not-a-scenario']],
     [
