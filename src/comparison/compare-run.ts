@@ -1,12 +1,7 @@
 import type { ExactAnswer } from '../stationary/exact-answer.js'
 import { type ClaimToJudge, judgeClaim } from './compare-claim.js'
-import {
-  type AnyEstimate,
-  type JudgedMeasure,
-  judgeMeasure,
-  type Prediction,
-  type Tolerance,
-} from './compare-measure.js'
+import { type AnyEstimate, judgeMeasure, type Prediction, type Tolerance } from './compare-measure.js'
+import type { JudgedMeasure } from './judged-measure.js'
 import { measureFindings, type RunFacts } from './run-findings.js'
 import { percent, shown } from './shown-number.js'
 import { type StructureFacts, structureFindings } from './structure-findings.js'
@@ -48,7 +43,7 @@ export function compareRun(input: RunToCompare): Comparison {
   const verdicts: Verdict[] = [...Object.values(judged), ...Object.values(claims)].map((each) => each.verdict)
   const findings = [
     ...(input.causes ?? []),
-    ...claimFindings(input.claims, claims, judged),
+    ...claimFindings(input.claims, claims, judged, simulatedValues(adjusted)),
     ...(input.structure === undefined ? [] : structureFindings(input.structure, input.run.unit)),
     ...measureFindings(judged, adjusted, predictions, input.run, input.structure),
   ]
@@ -73,8 +68,8 @@ const overall = (verdicts: readonly Verdict[]): Verdict =>
 
 /** Causes before what follows from them: what the run could not show comes after what is wrong. */
 const order: readonly Finding['code'][] = [
-  'explosive', 'outward-drift', 'balanced-drift', 'one-way', 'open-class', 'start-dependent', 'absorbing', 'slow-mixing',
-  'bias-left', 'batches-short', 'simulation-off', 'claim-off', 'too-short', 'rare-states', 'harmless-difference', 'periodic',
+  'explosive', 'outward-drift', 'balanced-drift', 'one-way', 'open-class', 'start-dependent', 'absorbing', 'claim-off',
+  'slow-mixing', 'bias-left', 'batches-short', 'simulation-off', 'rare-states', 'too-short', 'harmless-difference', 'periodic',
 ] // biome-ignore format: one list
 
 const ordered = (findings: readonly Finding[]): Finding[] =>
@@ -84,21 +79,36 @@ function claimFindings(
   claims: readonly ClaimToJudge[],
   comparisons: Readonly<Record<string, ClaimComparison>>,
   judged: Readonly<Record<string, JudgedMeasure>>,
+  simulated: Readonly<Record<string, number>>,
 ): Finding[] {
   return claims.flatMap((claim) => {
     const { verdict, exact, tolerance } = comparisons[claim.measure]
-    if (verdict !== 'disagrees') return []
-    const against = exact ?? judged[claim.measure]?.estimate
+    if (verdict === 'agrees') return []
+    if (verdict === 'undecided') return exact === null ? [] : [claimOnBorder(claim, exact, tolerance)]
+    const against = exact ?? simulated[claim.measure]
     const off =
       against === undefined || against === 0 ? '' : ` (${percent(Math.abs(claim.value - against) / Math.abs(against))})`
-    const simulated = judged[claim.measure]?.verdict === 'agrees' ? ' The simulation agrees with the exact value.' : ''
+    const agreement = judged[claim.measure]?.verdict === 'agrees' ? ' The simulation agrees with the exact value.' : ''
     return [
       {
         code: 'claim-off' as const,
         says: `The claim about ${claim.measure} is off: ${claim.written} is claimed${claim.source === undefined ? '' : ` (${claim.source})`}, ${exact === null ? 'the simulation gives' : 'the exact value is'} ${against === undefined ? 'something else' : shown(against, 6)}.`,
-        evidence: `The difference is ${against === undefined ? 'larger' : shown(Math.abs(claim.value - against))}${off}; ${shown(tolerance)} is allowed.${simulated}`,
+        evidence: `The difference is ${against === undefined ? 'larger' : shown(Math.abs(claim.value - against))}${off}; ${shown(tolerance)} is allowed.${agreement}`,
         next: 'Look for what the claim was worked out from: its rates, its number of places, or its formula.',
       },
     ]
   })
 }
+
+/** The claim lies where the error of the exact value can't tell it right from wrong. */
+const claimOnBorder = (claim: ClaimToJudge, exact: number, tolerance: number): Finding => ({
+  code: 'too-short',
+  says: `The claim about ${claim.measure} lies on the border of its tolerance, closer than the exact value is known.`,
+  evidence: `${claim.written} is claimed, the exact value is ${shown(exact, 9)}, ${shown(tolerance)} is allowed.`,
+  next: 'Give the claim with one more digit, or another tolerance.',
+})
+
+const simulatedValues = (adjusted: Readonly<Record<string, AnyEstimate>>): Record<string, number> =>
+  Object.fromEntries(
+    Object.entries(adjusted).flatMap(([name, each]) => ('points' in each ? [] : [[name, each.estimate]])),
+  )

@@ -1,4 +1,6 @@
-import { type AnyEstimate, fewestCorrelationTimes, type JudgedMeasure, type Prediction } from './compare-measure.js'
+import { neverSeen } from '../estimation/batch-means.js'
+import { type AnyEstimate, fewestCorrelationTimes, type Prediction } from './compare-measure.js'
+import type { JudgedMeasure } from './judged-measure.js'
 import { inUnits, percent, shown } from './shown-number.js'
 import type { StructureFacts } from './structure-findings.js'
 import type { Finding } from './verdict.js'
@@ -21,6 +23,10 @@ export function measureFindings(
   structure: StructureFacts | undefined,
 ): Finding[] {
   const of = (reason: JudgedMeasure['reason']) => Object.entries(judged).filter(([, each]) => each.reason === reason)
+  const never = ([name, { exact }]: [string, JudgedMeasure]): boolean => {
+    const estimate = adjusted[name]
+    return exact !== 0 && 'noInterval' in estimate && estimate.noInterval === neverSeen
+  }
   const mixture = (structure?.classes.filter((each) => each.reachedWith > 0).length ?? 1) > 1
   return [
     ...slowMixing(predictions, run),
@@ -28,7 +34,15 @@ export function measureFindings(
     ...biasLeft(of('bias left'), predictions, run),
     ...(run.unsettled === undefined ? [] : [unsettled(run)]),
     ...simulationOff(of('off')),
-    ...tooShort([...of('too wide'), ...of('no interval'), ...of('slow')], adjusted, run, mixture),
+    ...rare(of('no interval').filter(never), predictions, run),
+    ...tooShort(
+      [...of('too wide'), ...of('no interval').filter((each) => !never(each)), ...of('slow')],
+      adjusted,
+      predictions,
+      run,
+      mixture,
+    ),
+    ...noPercentage(of('no percentage')),
     ...harmless(of('harmless')),
   ]
 }
@@ -98,41 +112,88 @@ function simulationOff(measures: readonly [string, JudgedMeasure][]): Finding[] 
   ]
 }
 
+/** How many times as long a run must be for a half-width of half the tolerance: it falls with the root of the length. */
+const timesAsLong = (halfWidth: number, tolerance: number): number => ((2 * halfWidth) / tolerance) ** 2
+
+/** Beyond so many times the length nobody runs. */
+const mostTimesAsLong = 1e4
+
+function rare(
+  measures: readonly [string, JudgedMeasure][],
+  predictions: Readonly<Record<string, Prediction>>,
+  run: RunFacts,
+): Finding[] {
+  return measures.map(([name, { exact, tolerance }]) => {
+    const times = name in predictions ? timesAsLong(predictions[name].halfWidth, tolerance) : Number.POSITIVE_INFINITY
+    return {
+      code: 'rare-states' as const,
+      says: `What ${name} measures is so rare that the run never met it.`,
+      evidence: `Its exact value is ${shown(exact)}; the run observed ${inUnits(run.replications * run.runLength, run.unit)} in all.`,
+      next:
+        times <= mostTimesAsLong
+          ? `Take the exact value, or run longer: --run-length ${roundedUp(run.runLength * times)} should decide.`
+          : 'Take the exact value: no run of a length that can be afforded shows it.',
+    }
+  })
+}
+
 function tooShort(
   measures: readonly [string, JudgedMeasure][],
   adjusted: Readonly<Record<string, AnyEstimate>>,
+  predictions: Readonly<Record<string, Prediction>>,
   run: RunFacts,
   mixture: boolean,
 ): Finding[] {
   if (measures.length === 0) return []
-  let factor = 2
+  let times = 2
   const parts = measures.map(([name, { adjustedHalfWidth, tolerance }]) => {
-    if (adjustedHalfWidth === undefined) {
-      const estimate = adjusted[name]
-      return `${name} has no interval: ${'points' in estimate ? 'nothing seen' : (estimate.noInterval ?? 'too few data')}`
+    const estimate = adjusted[name]
+    const predicted = predictions[name]?.halfWidth ?? 0
+    // The interval of a quantile jumps from value to value: no law says when it will hold one only.
+    if ('low' in estimate && adjustedHalfWidth !== undefined) {
+      times = Math.max(times, 4)
+      return `${name} lies between ${shown(estimate.low ?? Number.NaN)} and ${shown(estimate.high ?? Number.NaN)}`
     }
-    if (tolerance > 0) factor = Math.max(factor, ((2 * adjustedHalfWidth) / tolerance) ** 2)
+    times = Math.max(times, timesAsLong(Math.max(adjustedHalfWidth ?? 0, predicted), tolerance))
+    if (adjustedHalfWidth === undefined) {
+      const why = 'points' in estimate ? 'too few batches, or they hang together' : estimate.noInterval
+      return `${name} has no interval: ${why ?? 'too few data'}`
+    }
     return `${name} is known to ± ${shown(adjustedHalfWidth, 2)}, and ${shown(tolerance, 2)} matters`
   })
-  const longer = roundedUp(run.runLength * Math.min(factor, 1e9))
-  const more = roundedUp(run.replications * Math.min(factor, 1e9))
+  const option = mixture
+    ? `Run more replications: --replications ${roundedUp(run.replications * times)} should decide.`
+    : `Run longer: --run-length ${roundedUp(run.runLength * times)} should decide. Or allow a larger difference with --tolerance.`
   return [
     {
       code: 'too-short',
       says: `The run is too short to say whether ${list(measures.map(([name]) => name))} ${measures.length === 1 ? 'agrees' : 'agree'}.`,
       evidence: `${parts.join('; ')}.`,
-      next: mixture
-        ? `Run more replications: --replications ${more} would decide.`
-        : `Run longer: --run-length ${longer} would decide. Or allow a larger difference with --tolerance.`,
+      next:
+        times <= mostTimesAsLong
+          ? option
+          : 'Allow a larger difference with --tolerance: no affordable run decides this.',
     },
   ]
 }
+
+const noPercentage = (measures: readonly [string, JudgedMeasure][]): Finding[] =>
+  measures.length === 0
+    ? []
+    : [
+        {
+          code: 'too-short',
+          says: `The exact value of ${list(measures.map(([name]) => name))} is 0, and a tolerance in percent allows nothing there.`,
+          evidence: `${measures.map(([name, { estimate, adjustedHalfWidth }]) => `${name}: simulated ${shown(estimate)} ± ${shown(adjustedHalfWidth ?? 0, 2)}`).join('; ')}, and 0 lies inside.`,
+          next: 'Give the difference that matters as a plain number, --tolerance 0.01 say.',
+        },
+      ]
 
 function harmless(measures: readonly [string, JudgedMeasure][]): Finding[] {
   return measures.map(([name, { difference, exact, tolerance, pValue }]) => ({
     code: 'harmless-difference' as const,
     says: `The simulation of ${name} is visibly off, but by less than matters.`,
-    evidence: `It is off by ${shown(difference)}${exact === 0 ? '' : ` (${percent(Math.abs(difference / exact))})`}, ${shown(tolerance)} is allowed; chance alone does this once in ${shown(1 / Math.max(pValue, 1e-12), 2)} runs.`,
+    evidence: `It is off by ${shown(difference)}${exact === 0 ? '' : ` (${percent(Math.abs(difference / exact))})`}, ${shown(tolerance)} is allowed; chance alone does this ${pValue < 1e-9 ? 'in no run' : `once in ${shown(1 / pValue, 2)} runs`}.`,
     next: 'Nothing, if that tolerance is yours. Otherwise repeat with another --seed and a smaller --tolerance.',
   }))
 }
@@ -140,5 +201,7 @@ function harmless(measures: readonly [string, JudgedMeasure][]): Finding[] {
 /** Up to two significant digits, so that it can be pasted. */
 export function roundedUp(value: number): number {
   const unit = 10 ** (Math.floor(Math.log10(value)) - 1)
-  return unit >= 1 ? Math.ceil(value / unit) * unit : Math.ceil(value * 100) / 100
+  // Rounding of the quotient must not take a number that is round already to the next one.
+  const rounded = Math.ceil((value / unit) * (1 - 1e-12)) * unit
+  return Number(rounded.toPrecision(2))
 }

@@ -96,13 +96,15 @@ export function methodOf(replications: number, batches: number): string {
 export const correlatedBatches =
   'the batches of the one replication hang together: run longer, or with more replications'
 
+export const neverSeen = 'it was never seen in the run'
+
 /** Why no honest interval can be made from these means. */
 export function reasonAgainst(means: Float64Array, correlated: boolean): string | undefined {
   if (correlated) return correlatedBatches
   if (means.length < 2) return 'one observation alone has no interval: run more replications'
   const [first] = means
   if ((first === 0 || first === 1) && means.every((x) => x === first)) {
-    return first === 0 ? 'it was never seen in the run' : 'nothing else was ever seen in the run'
+    return first === 0 ? neverSeen : 'nothing else was ever seen in the run'
   }
   return undefined
 }
