@@ -1,6 +1,6 @@
 import { InvalidArgumentError } from 'commander'
 import { compare, one, sign, toNumber } from '../numbers/fraction.js'
-import { warmUpRules } from '../scenario/parse-run.js'
+import { warmUpRules } from '../scenario/warm-up-rules.js'
 import { writtenNumber } from '../scenario/written-number.js'
 
 // Each function reads the text behind one option. What it can't use it refuses in two short sentences: what is wrong

@@ -18,26 +18,27 @@ export function startJobThread(): JobThread {
     resourceLimits: { maxOldGenerationSizeMb: Math.floor(getHeapStatistics().heap_size_limit / 2 ** 20) },
   })
   let stopped = false
+  let running:
+    | { readonly end: (outcome: Outcome) => void; readonly onProgress: (progress: Progress) => void }
+    | undefined
+  const end = (outcome: Outcome): void => {
+    running?.end(outcome)
+    running = undefined
+  }
+  // Set once for all jobs: a worker whose listeners are taken away and set anew receives no more messages (Node 20).
+  worker.on('message', (message: Message) => {
+    if (message.kind === 'progress') running?.onProgress(message.progress)
+    else end(message)
+  })
+  worker.on('error', (error) => end(ofThread(error)))
+  worker.on('exit', () =>
+    end(stopped ? { kind: 'interrupted' } : { kind: 'defect', message: 'the job ended without a result', stack: '' }),
+  )
   return {
     run: (order, onProgress) =>
       new Promise((resolve) => {
         if (stopped) return resolve({ kind: 'interrupted' })
-        const end = (outcome: Outcome): void => {
-          worker.removeAllListeners()
-          resolve(outcome)
-        }
-        worker.on('message', (message: Message) => {
-          if (message.kind === 'progress') onProgress(message.progress)
-          else end(message)
-        })
-        worker.on('error', (error) => end(ofThread(error)))
-        worker.on('exit', () =>
-          end(
-            stopped
-              ? { kind: 'interrupted' }
-              : { kind: 'defect', message: 'The job ended without a result', stack: '' },
-          ),
-        )
+        running = { end: resolve, onProgress }
         worker.postMessage(order)
       }),
     async stop() {

@@ -37,7 +37,8 @@ const commands: readonly CommandText[] = [
     does: 'Decide whether the model has a long-run answer, compute it exactly, simulate it, and say whether they agree.',
     several: true,
     runs: true,
-    ends: `0 agreement (or what "expect" says) · 1 disagreement, or no steady state
+    ends: `0 agreement (or what "expect" says)
+             1 disagreement, or no steady state
              2 the input can't be used · 3 undecided at this run length
              4 a limit was reached · 130 interrupted
              With several files: the first of 130, 2, 4, 1, 3, 0 that occurred.`,
@@ -49,7 +50,8 @@ const commands: readonly CommandText[] = [
     several: false,
     runs: false,
     ends: `0 decided · 1 "expect" is contradicted · 3 the class stays open
-             2 the input can't be used · 4 a limit was reached · 130 interrupted`,
+             2 the input can't be used · 4 a limit was reached
+             130 interrupted`,
     example: 'stillmark classify scenarios/shift-rota.yaml',
   },
   {
@@ -57,8 +59,9 @@ const commands: readonly CommandText[] = [
     does: 'Compute every long-run measure exactly, with a bound on its error. Nothing is simulated.',
     several: false,
     runs: false,
-    ends: `0 solved · 1 no steady state, or "expect" is contradicted · 3 the class stays open
-             2 the input can't be used · 4 a limit was reached · 130 interrupted`,
+    ends: `0 solved · 1 no steady state, or "expect" is contradicted
+             3 the class stays open · 2 the input can't be used
+             4 a limit was reached · 130 interrupted`,
     example: 'stillmark solve scenarios/parcel-lockers.yaml --states',
   },
   {
@@ -67,8 +70,9 @@ const commands: readonly CommandText[] = [
     several: false,
     runs: true,
     ends: `0 simulated · 3 it is open whether there is a long-run answer
-             2 the input can't be used · 4 a limit was reached · 130 interrupted`,
-    example: 'stillmark simulate scenarios/parcel-lockers.yaml --seed monday --replications 32',
+             2 the input can't be used · 4 a limit was reached
+             130 interrupted`,
+    example: 'stillmark simulate scenarios/parcel-lockers.yaml --seed monday',
   },
 ]
 
@@ -136,7 +140,7 @@ export function readCommandLine(
       .showHelpAfterError(`\`stillmark ${text.name} -h\` shows the options.`)
       .addHelpText(
         'after',
-        `\nExit status: ${text.ends}\n\nErrors go to standard error as text, with --json too; standard output then stays empty.\n\nExample:\n  ${text.example}\n`,
+        `\nExit status: ${text.ends}\n\nErrors go to standard error as text, with --json too: standard output then\nstays empty.\n\nExample:\n  ${text.example}\n`,
       )
       .action((files: string | string[], options: Record<string, unknown>) => {
         request = requestOf(text.name, [files].flat(), options)

@@ -1,9 +1,16 @@
 #!/usr/bin/env node
-import type { ExitStatus } from './exit-status.js'
-import { readCommandLine } from './program.js'
-import { defect, run } from './run.js'
+import type { Surroundings } from './run.js'
 
-const { stdout, stderr, env } = process
+// The signals come first, before anything else is loaded: whenever it comes, Ctrl-C ends with 130.
+let interrupted = (): void => process.exit(130)
+for (const signal of ['SIGINT', 'SIGTERM'] as const) {
+  process.on(signal, () => {
+    process.exitCode = 130
+    interrupted()
+  })
+}
+
+const { stdout, stderr, env: environment } = process
 
 // A reader that has seen enough (`| head`) closes the pipe: what was decided so far is the ending.
 for (const stream of [stdout, stderr]) {
@@ -13,34 +20,28 @@ for (const stream of [stdout, stderr]) {
   })
 }
 
-async function main(): Promise<ExitStatus> {
-  const request = readCommandLine(
-    process.argv.slice(2),
-    (text) => void stdout.write(text),
-    (text) => void stderr.write(text),
-    stdout.columns,
-  )
-  if ('exitStatus' in request) return request.exitStatus
-  return run(request, {
+const { readCommandLine } = await import('./program.js')
+const request = readCommandLine(
+  process.argv.slice(2),
+  (text) => void stdout.write(text),
+  (text) => void stderr.write(text),
+  stdout.columns,
+)
+if ('exitStatus' in request) process.exitCode = request.exitStatus
+else {
+  const { defect, run } = await import('./run.js')
+  const surroundings: Surroundings = {
     stdout,
     stderr,
-    environment: env,
+    environment,
     onInterrupt: (callback) => {
-      process.once('SIGINT', () => {
-        process.exitCode = 130
-        callback()
-      })
-      process.once('SIGTERM', () => {
-        process.exitCode = 130
-        callback()
-      })
+      interrupted = callback
     },
-  })
-}
-
-try {
-  process.exitCode = await main()
-} catch (error) {
-  const { message, stack } = error instanceof Error ? error : new Error(String(error))
-  process.exitCode = defect({ message, stack: stack ?? '' }, (text) => void stderr.write(text), env)
+  }
+  try {
+    process.exitCode = await run(request, surroundings)
+  } catch (error) {
+    const { message, stack } = error instanceof Error ? error : new Error(String(error))
+    process.exitCode = defect({ message, stack: stack ?? '' }, (text) => void stderr.write(text), environment)
+  }
 }

@@ -4,10 +4,8 @@ import type { LocatedMap } from './located-yaml.js'
 import { suggestion } from './names.js'
 import { entriesOf, entryOf, type Reading, scalarOf } from './reading.js'
 import type { Claim, Expectation, Measure, SimulationSettings, Tolerance } from './scenario.js'
+import { warmUpRules } from './warm-up-rules.js'
 import { writtenNumber } from './written-number.js'
-
-/** Rules that `warm-up` may name. */
-export const warmUpRules = ['auto', 'mser'] as const
 
 export function parseClaims(reading: Reading, root: LocatedMap, measures: readonly Measure[]): Claim[] {
   const { faults } = reading
