@@ -50,7 +50,7 @@ export function judgeDistribution(
     exact: share,
     estimate: found,
     ...(halfWidth === undefined ? {} : { adjustedHalfWidth: halfWidth }),
-    pValue: Math.min(1, smallest * points.length),
+    pValue: Math.min(1, smallest * Math.max(1, points.length)),
   }
   if (off) return { ...judged, verdict: 'disagrees', reason: 'off' }
   if (unknown || points.length === 0) return { ...judged, verdict: 'undecided', reason: 'no interval' }

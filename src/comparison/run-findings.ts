@@ -193,7 +193,7 @@ function harmless(measures: readonly [string, JudgedMeasure][]): Finding[] {
   return measures.map(([name, { difference, exact, tolerance, pValue }]) => ({
     code: 'harmless-difference' as const,
     says: `The simulation of ${name} is visibly off, but by less than matters.`,
-    evidence: `It is off by ${shown(difference)}${exact === 0 ? '' : ` (${percent(Math.abs(difference / exact))})`}, ${shown(tolerance)} is allowed; chance alone does this ${pValue < 1e-9 ? 'in no run' : `once in ${shown(1 / pValue, 2)} runs`}.`,
+    evidence: `It is off by ${shown(difference)}${exact === 0 ? '' : ` (${percent(Math.abs(difference / exact))})`}, ${shown(tolerance)} is allowed; chance alone does this ${pValue < 1e-9 ? 'in no run' : `once in ${shown(Number((1 / pValue).toPrecision(2)))} runs`}.`,
     next: 'Nothing, if that tolerance is yours. Otherwise repeat with another --seed and a smaller --tolerance.',
   }))
 }
