@@ -54,6 +54,12 @@ export function joinBatches(series: Float64Array, replications: number, batches:
   return { batches: 1, test, correlated: replications === 1 && test !== undefined }
 }
 
+/** Degrees of freedom that an interval has where 32 batches a replication pass the test. */
+export const usualDegreesOfFreedom = (replications: number): number =>
+  replications >= enoughReplications
+    ? replications - 1
+    : (32 / (replications === 1 ? safetyAlone : safety)) * replications - 1
+
 /** Means of neighbours, two by two; an even number of them a replication. */
 function pairs(means: Float64Array): Float64Array {
   const joined = new Float64Array(means.length / 2)

@@ -1,4 +1,5 @@
-import { normalTailQuantile } from '../numbers/distributions.js'
+import { usualDegreesOfFreedom } from '../estimation/joined-batches.js'
+import { studentTailQuantile } from '../numbers/distributions.js'
 
 /** What one measure asks of the run. */
 export interface MeasureNeed {
@@ -21,12 +22,12 @@ export interface RunLength {
 const marginOfTolerance = 2
 /** Correlation times that a replication lasts at least. */
 const fewestCorrelationTimes = 50
-/** Room for Student's quantile against the normal one and for the spread of the half-width itself. */
-const room = 1.3
+/** Room for the spread of the half-width itself: at 15 degrees of freedom four in five are within it. */
+const room = 1.15
 
 /**
  * The run length at which every measure's adjusted half-width should be half its tolerance, within a budget of events.
- * Half-width z·√(variance constant / (R·T)): Whitt 1989 (from memory).
+ * Half-width t·√(variance constant / (R·T)): Whitt 1989 (from memory).
  */
 export function chooseRunLength(
   needs: readonly MeasureNeed[],
@@ -41,12 +42,12 @@ export function chooseRunLength(
   },
 ): RunLength {
   const { replications, confidence, eventsPerTimeUnit, maxEvents, warmUp } = given
-  const z = normalTailQuantile((1 - confidence) / 2) * room
+  const quantile = studentTailQuantile((1 - confidence) / 2, usualDegreesOfFreedom(replications)) * room
   let wanted = 50 * warmUp
   let basis = 'fifty times the warm-up'
   for (const { name, varianceConstant, tolerance, correlationTime } of needs) {
     if (tolerance > 0) {
-      const time = (varianceConstant / replications) * ((marginOfTolerance * z) / tolerance) ** 2
+      const time = (varianceConstant / replications) * ((marginOfTolerance * quantile) / tolerance) ** 2
       if (time > wanted) {
         wanted = time
         basis = `the interval of ${name} should be half as wide as its tolerance`
