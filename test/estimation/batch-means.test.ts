@@ -266,8 +266,9 @@ describe('coverage', () => {
     expect(covered).toBeGreaterThan(least)
     expect(covered).toBeLessThan(0.964)
   })
-  // output-analysis-coverage.json: plain batch means on short runs, far below the 90 % asked for. 4,000 runs have a
-  // standard error of at most 0.0079, the reference of 0.0018: four of both together are 0.0325.
+  // output-analysis-coverage.json: plain batch means on short runs, far below the 90 % asked for. 2,000 runs have a
+  // standard error of at most 0.0112, the reference of 0.0018: four of both together are 0.045, which chance exceeds
+  // once in 15,000 such tests.
   const cases = referenceCases('output-analysis-coverage')
   test.each(cases.flatMap(({ id, model, values }) => [5, 10, 20].map((batches) => ({ id, model, values, batches }))))(
     '$id, $batches batches fixed: the published coverage',
