@@ -18,7 +18,7 @@ const level = 0.2
  */
 const safety = 8
 const safetyAlone = 4
-/** Fewer batches a replication say too little of their own correlation. */
+/** Fewer batches a replication say too little of their own correlation. At least `safety`: then one or more is left. */
 const fewestToTest = 8
 /**
  * From so many replications on each counts as a whole, whatever its batches look like: Student's quantile gains little
@@ -44,8 +44,7 @@ export function joinBatches(series: Float64Array, replications: number, batches:
     test = batchTest(means, replications, left)
     // What does not vary is not correlated.
     if (test === undefined || test.pValue > level) {
-      const kept = Math.max(1, Math.floor(left / times))
-      return { batches: replications === 1 ? Math.max(2, kept) : kept, test, correlated: false }
+      return { batches: Math.floor(left / times), test, correlated: false }
     }
     if (left % 2 !== 0) break
     left /= 2

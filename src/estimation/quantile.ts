@@ -48,12 +48,10 @@ export function estimateQuantile(
   const estimate = values[at]
   const pValueOf = (value: number): number => {
     // Below the value there must be less than the level, up to it at least the level.
-    const upTo = lastAtMost(values, value)
-    const below = upTo >= 0 && values[upTo] === value ? upTo - 1 : upTo
-    const reach = upTo < 0 ? undefined : shares[upTo]
-    const under = below < 0 ? undefined : shares[below]
-    const short = upTo < 0 ? 0 : onOneSide(reach, level, 1)
-    const over = under === undefined ? 1 : onOneSide(under, level, -1)
+    const upTo = values.findLastIndex((each) => each <= value)
+    const below = values[upTo] === value ? upTo - 1 : upTo
+    const short = upTo < 0 ? 0 : onOneSide(shares[upTo], level, 1)
+    const over = below < 0 ? 1 : onOneSide(shares[below], level, -1)
     return Math.min(1, 2 * Math.min(short, over))
   }
   const deciding = shares[at]
@@ -78,8 +76,7 @@ export function estimateQuantile(
  * P-value of "the share is the level" against a share that is too low (side 1) or too high (side -1). Where all n batches
  * show nothing else, chance does that with probability levelⁿ at most (or (1 - level)ⁿ), however slow each one is.
  */
-function onOneSide(share: Estimate | undefined, level: number, side: 1 | -1): number {
-  if (share === undefined) return 1
+function onOneSide(share: Estimate, level: number, side: 1 | -1): number {
   const gap = (level - share.estimate) * side
   if (gap <= 1e-12) return 1
   const { standardError, degreesOfFreedom, batches, noInterval } = share
@@ -87,12 +84,6 @@ function onOneSide(share: Estimate | undefined, level: number, side: 1 | -1): nu
     return standardError === 0 ? 0 : studentTail(gap / standardError, degreesOfFreedom)
   }
   return noInterval === correlatedBatches ? 1 : (side === 1 ? 1 - level : level) ** (batches ?? 0)
-}
-
-const lastAtMost = (values: Float64Array, value: number): number => {
-  let last = -1
-  while (last + 1 < values.length && values[last + 1] <= value) last++
-  return last
 }
 
 function cumulativeEstimates(
@@ -106,7 +97,7 @@ function cumulativeEstimates(
   const estimates: Estimate[] = []
   for (let v = 0; v < count; v++) {
     for (let row = 0; row < rows; row++) column[row] += shares[row * count + v]
-    estimates.push(estimateMean(column.slice(), replications, confidence))
+    estimates.push(estimateMean(column, replications, confidence))
   }
   return estimates
 }
