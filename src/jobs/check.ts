@@ -64,7 +64,7 @@ export async function check(file: string, options: JobOptions = {}): Promise<Job
     document,
     exitStatus: exitStatusOf(ground, comparison),
     details: {
-      ...detailsOf(ground.scenario, nextOf(comparison, exact), request),
+      ...detailsOf(ground.scenario, nextOf(comparison, exact, settings.runLength), request),
       warmUpBasis: chosen.warmUpBasis,
       runLengthBasis: chosen.runLengthBasis,
       ...(ground.scenario.expect === undefined || ground.part.recurrence === 'undetermined'
@@ -137,8 +137,15 @@ function exitStatusOf({ scenario, part }: Ground, { verdict }: Comparison): 0 | 
 export const isExpected = (expect: string, { recurrence, explosive }: StructurePart): boolean =>
   expect === 'explosive' ? explosive === true : expect === recurrence
 
-function nextOf({ findings, verdict }: Comparison, exact: ExactAnswer | undefined): string {
-  if (verdict === 'agrees') return 'nothing'
+function nextOf(
+  { findings, verdict, measures }: Comparison,
+  exact: ExactAnswer | undefined,
+  runLength: number,
+): string {
+  if (verdict === 'agrees') {
+    if (Object.keys(measures).length === 0) return 'nothing'
+    return `nothing. To tell differences half as large, run four times as long: --run-length ${Number((4 * runLength).toPrecision(6))}`
+  }
   if (findings.length > 0) return findings[0].next
   return exact === undefined
     ? 'For an exact answer, give each variable an upper bound ("to:") that it hardly ever reaches.'

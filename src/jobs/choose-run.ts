@@ -1,14 +1,15 @@
 import { toleranceOf } from '../comparison/compare-measure.js'
 import { adjustedConfidence } from '../comparison/compare-run.js'
 import type { TimeAverage } from '../dynamics/time-average.js'
-import { warmUpCut } from '../estimation/marginal-standard-error.js'
 import { chooseRunLength, type MeasureNeed, pleasantAbove } from '../planning/run-length.js'
 import type { RunSettings } from '../simulation/observations.js'
-import { type PilotSeries, simulatePilot } from '../simulation/pilot.js'
+import type { PilotSeries } from '../simulation/pilot.js'
 import type { ExactAnswer } from '../stationary/exact-answer.js'
 import type { Ground } from './ground.js'
 import { exactWarmUp } from './known-dynamics.js'
 import type { Progress } from './options.js'
+import { eventsPerTimeUnit } from './pace.js'
+import { pilotWarmUp } from './pilot-warm-up.js'
 import { runDefaults } from './run-defaults.js'
 import type { RunRequest } from './run-request.js'
 
@@ -22,15 +23,6 @@ export interface ChosenRun {
   readonly unsettled?: string
 }
 
-/** Points that a pilot's time is cut into, a multiple of MSER's batches of five. */
-const pilotPoints = 1000
-/** Firings a replication of the first pilot has; each further one is four times as long. */
-const firstPilot = 1000
-const pilotEvents = 6e6
-/** The same where the moves of each state are worked out as it is met, which takes ten times as long. */
-const pilotEventsWithoutStates = 6e5
-/** A cut within this part of the pilot's length is early enough to be believed. */
-const earlyCut = 0.25
 /** Events in all, where the moves of each state are worked out as it is met. */
 const eventsWithoutStates = 8e6
 
@@ -159,22 +151,6 @@ function batchesOf({ finite }: Ground, runLength: number, discrete: boolean): nu
   return batches
 }
 
-function eventsPerTimeUnit(
-  { model, finite }: Ground,
-  exact: ExactAnswer | undefined,
-  pilot: PilotSeries | undefined,
-): number {
-  if (model.time === 'discrete') return 1
-  if (finite !== undefined && exact?.shares !== undefined) {
-    const { rowStart, rate, size } = finite.chain
-    let total = 0
-    for (let i = 0; i < size; i++)
-      for (let arc = rowStart[i]; arc < rowStart[i + 1]; arc++) total += exact.shares[i] * rate[arc]
-    return total
-  }
-  return pilot === undefined ? 1 : pilot.events / (pilot.settings.replications * pilot.settings.length)
-}
-
 function needsOf(
   { model }: Ground,
   exact: ExactAnswer | undefined,
@@ -223,69 +199,3 @@ function pilotNeeds(
 }
 
 const average = (values: readonly number[]): number => values.reduce((a, b) => a + b, 0) / values.length
-
-interface PilotWarmUp {
-  readonly pilot: PilotSeries
-  readonly warmUp: number
-  readonly basis: string
-  readonly unsettled?: string
-}
-
-/** Pilots of growing length until the rule's cut of every measure lies early in them. */
-async function pilotWarmUp(
-  ground: Ground,
-  exact: ExactAnswer | undefined,
-  { seed, replications, workers }: RunRequest,
-  { onProgress, signal }: { readonly onProgress: (progress: Progress) => void; readonly signal: AbortSignal },
-): Promise<PilotWarmUp> {
-  const { model, finite } = ground
-  const discrete = model.time === 'discrete'
-  const perTimeUnit = Math.max(eventsPerTimeUnit(ground, exact, undefined), 1e-300)
-  // A single long replication has no others to be averaged with: pilots always have a few.
-  const pilots = Math.min(Math.max(replications, 8), 32)
-  const budget = finite === undefined ? pilotEventsWithoutStates : pilotEvents
-  let longest = budget / pilots / perTimeUnit
-  let length = Math.min(firstPilot / perTimeUnit, longest)
-  for (;;) {
-    const steps = discrete ? Math.max(1, Math.ceil(length)) : length
-    const points = discrete && steps < pilotPoints ? steps : pilotPoints
-    onProgress({ stage: 'pilot' })
-    const pilot = await simulatePilot(
-      model,
-      finite?.chain,
-      { seed, replications: pilots, length: steps, points },
-      { workers, signal, maxEvents: Math.ceil((4 * budget) / pilots) },
-    )
-    const cuts = Object.values(pilot.measures).flatMap((measure) =>
-      (measure.kind === 'mean' ? [measure.means] : [measure.top, measure.bottom]).map((series) =>
-        warmUpCut(series, pilots),
-      ),
-    )
-    const worst = cuts.reduce((a, b) => (a.settled && (!b.settled || b.cut > a.cut) ? b : a), {
-      cut: 0,
-      settled: true,
-      why: 'nothing has to be deleted',
-    })
-    if (worst.settled && worst.cut <= earlyCut * points) {
-      const warmUp = worst.cut === 0 ? 0 : pleasantAbove((worst.cut * steps) / points)
-      return {
-        pilot,
-        warmUp: discrete ? Math.ceil(warmUp) : warmUp,
-        basis: `${worst.why} of ${pilots} averaged pilots`,
-      }
-    }
-    if (length >= longest || pilot.stoppedEarly !== undefined) {
-      return {
-        pilot,
-        warmUp: steps,
-        basis: 'the whole pilot is deleted',
-        unsettled: worst.settled ? 'the best cut lies late in the longest pilot' : worst.why,
-      }
-    }
-    if (exact === undefined) longest = budget / Math.max(pilot.events / steps, 1e-300)
-    length = Math.min(4 * length, longest)
-    if (length <= steps) {
-      return { pilot, warmUp: steps, basis: 'the whole pilot is deleted', unsettled: worst.why }
-    }
-  }
-}

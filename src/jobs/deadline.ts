@@ -27,14 +27,12 @@ export function withDeadline(options: JobOptions): {
 
 function timeIsUp(seconds: number, reached: Progress | undefined): StillmarkError {
   const { stage, done, unit } = reached ?? {}
-  const at =
-    stage === undefined
-      ? ''
-      : ` while ${stage}${done === undefined ? '' : ` (${done.toLocaleString('en-US')} ${unit ?? ''} done)`}`
+  const far = done === undefined || unit === undefined ? '' : ` (${done.toLocaleString('en-US')} ${unit} done)`
+  const at = stage === undefined ? '' : ` while ${stage}${far}`
   return new StillmarkError(
     {
       code: 'time-limit',
-      what: `The time limit of ${seconds} s is over${at.replace(' )', ')')}.`,
+      what: `The time limit of ${seconds} s is over${at}.`,
       next: 'Allow more with --time-limit, or make the run shorter with --run-length or the model smaller.',
     },
     'limit',
