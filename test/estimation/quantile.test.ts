@@ -113,6 +113,34 @@ describe('interval', () => {
       batches: 4,
     })
   })
+  test('it carries the test of the batches from which the share was decided', () => {
+    const { uniform } = draws('carried')
+    const first = Float64Array.from({ length: 64 }, uniform)
+    const two: Histogram = {
+      values: Float64Array.of(1, 2),
+      shares: Float64Array.from({ length: 128 }, (_, i) => (i % 2 === 0 ? first[i / 2] : 1 - first[(i - 1) / 2])),
+      batches: 32,
+    }
+    const found = estimateQuantile(two, 2, 0.2, 0.95)
+    expect(found.batchTest).toBeDefined()
+    expect(found.batchTest).toEqual(estimateMean(first, 2, 0.95).batchTest)
+    expect('batchTest' in estimateQuantile(four, 4, 0.5, 0.95)).toBe(false)
+    const { points } = estimateDistribution(two, 2, 0.95)
+    expect(points[0]).toEqual(estimateMean(first, 2, 0.95))
+  })
+  test('a share that does not vary rules out what it misses, and what hangs together rules out nothing', () => {
+    const steady = histogram([1, 2], Array(4).fill([0.25, 0.75]))
+    const { pValueOf } = estimateQuantile(steady, 4, 0.5, 0.95)
+    expect(pValueOf(1)).toBe(0)
+    expect(pValueOf(2)).toBe(1)
+    expect(estimateQuantile(steady, 4, 0.25, 0.95).pValueOf(1)).toBe(1) // the level is just reached
+    const climb: Histogram = {
+      values: Float64Array.of(1, 2),
+      shares: Float64Array.from({ length: 64 }, (_, i) => (i % 2 === 0 ? i / 64 : 1 - (i - 1) / 64)),
+      batches: 32,
+    }
+    expect(estimateQuantile(climb, 1, 0.9, 0.95).pValueOf(1)).toBe(1)
+  })
   test('refused: a level of 0 or 1, nothing seen, NaN', () => {
     expect(() => estimateQuantile(four, 4, 0, 0.95)).toThrow('a level of 0')
     expect(() => estimateQuantile(four, 4, 1, 0.95)).toThrow('a level of 1')
