@@ -49,7 +49,10 @@ export function compareRun(input: RunToCompare): Comparison {
   ]
   return {
     verdict:
-      exact === undefined && Object.keys(judged).length === 0 ? overall([...verdicts, 'undecided']) : overall(verdicts),
+      // Nothing compared is no agreement.
+      Object.keys(judged).length === 0 && (exact === undefined || verdicts.length === 0)
+        ? overall([...verdicts, 'undecided'])
+        : overall(verdicts),
     measures: Object.fromEntries(Object.entries(judged).map(([name, each]) => [name, comparisonOf(each)])),
     claims,
     findings: ordered(findings),

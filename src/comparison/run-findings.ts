@@ -51,7 +51,9 @@ const list = (names: readonly string[]): string =>
   names.length < 2 ? names.join('') : `${names.slice(0, -1).join(', ')} and ${names[names.length - 1]}`
 
 function slowMixing(predictions: Readonly<Record<string, Prediction>>, run: RunFacts): Finding[] {
-  const slow = Object.entries(predictions).filter(([, each]) => each.slow)
+  const slow = Object.entries(predictions).filter(
+    ([, each]) => each.slow && each.correlationTime * fewestCorrelationTimes > run.runLength,
+  )
   if (slow.length === 0) return []
   const longest = Math.max(...slow.map(([, { correlationTime }]) => correlationTime))
   return [

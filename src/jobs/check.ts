@@ -4,12 +4,12 @@ import { divergenceFindings } from '../comparison/divergence-findings.js'
 import type { StructureFacts } from '../comparison/structure-findings.js'
 import type { Comparison, Finding } from '../comparison/verdict.js'
 import type { ExactAnswer } from '../stationary/exact-answer.js'
-import { solve } from '../stationary/solve.js'
 import { chooseRun } from './choose-run.js'
 import { withDeadline } from './deadline.js'
 import { divergencePart } from './divergence.js'
 import type { DivergencePart, StillmarkDocument, StructurePart } from './document.js'
 import { adjustedEstimates } from './estimates.js'
+import { exactAnswer } from './exact-answer.js'
 import { exactPart } from './exact-part.js'
 import { type Ground, layGround } from './ground.js'
 import type { JobResult } from './job-result.js'
@@ -18,13 +18,13 @@ import type { JobOptions } from './options.js'
 import { runRequest } from './run-request.js'
 import { runSimulation } from './run-simulation.js'
 import { claimsToJudge, detailsOf, scenarioPart } from './scenario-part.js'
-import { explain, openClass } from './sentences.js'
+import { openClass } from './sentences.js'
 
 /** The main job: structure, exact answer, simulation, comparison, claims. */
 export async function check(file: string, options: JobOptions = {}): Promise<JobResult> {
   const report = withDeadline(options)
   const ground = await layGround(file, options, report.onProgress)
-  const exact = exactAnswer(ground, options, report)
+  const { exact, absent } = exactAnswer(ground, options, report)
   const request = runRequest(ground.scenario, options)
   const averages = knownTimeAverages(ground, exact)
   const chosen = await chooseRun(ground, exact, averages, request, report)
@@ -55,7 +55,7 @@ export async function check(file: string, options: JobOptions = {}): Promise<Job
     format: 'stillmark/check/1',
     scenario: scenarioPart(ground.scenario),
     structure: ground.part,
-    ...exactPart(exact, () => explain(ground.part)),
+    ...exactPart(exact, absent),
     ...(divergence === undefined ? {} : { divergence }),
     simulation: simulated.part,
     comparison,
@@ -72,21 +72,6 @@ export async function check(file: string, options: JobOptions = {}): Promise<Job
         : { expectationMet: isExpected(ground.scenario.expect, ground.part) }),
     },
   }
-}
-
-/** The exact long-run answer, or undefined where the model is not known to have one. */
-export function exactAnswer(
-  { model, finite }: Ground,
-  options: JobOptions,
-  { onProgress, signal }: ReturnType<typeof withDeadline>,
-): ExactAnswer | undefined {
-  if (finite === undefined) return undefined
-  onProgress({ stage: 'solving' })
-  return solve(model, finite.chain, finite.joined, finite.structure, {
-    maxMemoryBytes: options.maxMemoryBytes,
-    signal,
-    onProgress: (done) => onProgress({ stage: 'solving', done: Math.round(1000 * done), of: 1000 }),
-  })
 }
 
 export function structureFacts({ finite }: Ground, exact: ExactAnswer | undefined): StructureFacts | undefined {
@@ -147,6 +132,8 @@ function nextOf(
     return `nothing. To tell differences half as large, run four times as long: --run-length ${Number((4 * runLength).toPrecision(6))}`
   }
   if (findings.length > 0) return findings[0].next
+  if (exact !== undefined && Object.keys(measures).length === 0)
+    return 'Say under "measures" what is asked of the model.'
   return exact === undefined
     ? 'For an exact answer, give each variable an upper bound ("to:") that it hardly ever reaches.'
     : 'nothing'

@@ -24,7 +24,7 @@ export interface ChosenRun {
 }
 
 /** Events in all, where the moves of each state are worked out as it is met. */
-const eventsWithoutStates = 8e6
+const eventsWithoutStates = 2e7
 
 export async function chooseRun(
   ground: Ground,
@@ -72,7 +72,7 @@ export async function chooseRun(
   if (runLength === undefined) {
     const perTimeUnit = eventsPerTimeUnit(ground, exact, pilot)
     const chosen = chooseRunLength(
-      exact === undefined && pilot !== undefined
+      Object.keys(averages).length === 0 && pilot !== undefined
         ? pilotNeeds(pilot, warmUp, request)
         : needsOf(ground, exact, averages, request),
       {

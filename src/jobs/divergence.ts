@@ -31,18 +31,25 @@ export async function divergencePart(
       ? replicationsFor.growth
       : replicationsFor.speed
     const length = Math.max(1, events / replications / Math.max(eventsPerTimeUnit, 1e-300))
-    const runLength = model.time === 'discrete' ? Math.ceil(length) : length
-    const { finalStates, stoppedEarly } = await simulate(
-      model,
-      undefined,
-      { seed: `${request.seed} growth`, replications, warmUp: 0, runLength, batches: 1 },
-      { workers: request.workers, signal, maxEvents: 1e6 },
-    )
+    // Even, so that half of it is whole steps too.
+    const runLength = model.time === 'discrete' ? 2 * Math.ceil(length / 2) : length
+    const runTo = async (time: number) => {
+      const { finalStates, stoppedEarly } = await simulate(
+        model,
+        undefined,
+        { seed: `${request.seed} growth`, replications, warmUp: 0, runLength: time, batches: 1 },
+        { workers: request.workers, signal, maxEvents: 1e6 },
+      )
+      return stoppedEarly === undefined ? finalStates : undefined
+    }
+    // The same draws, so the same paths, once half way and once to the end.
+    const half = await runTo(runLength / 2)
+    const end = await runTo(runLength)
     for (const prediction of measurable) {
       predictions[prediction.name] =
-        finalStates === undefined || stoppedEarly !== undefined
+        half === undefined || end === undefined
           ? unobserved(prediction)
-          : observedAgainst(prediction, model.elements, model.start, finalStates, runLength, request)
+          : observedAgainst(prediction, model.elements, model.start, half, end, runLength, request)
     }
   }
   for (const prediction of countable.growth ?? []) predictions[prediction.name] ??= unobserved(prediction)
@@ -65,11 +72,16 @@ const unobserved = ({ value, inMean }: Prediction): PredictionPart => ({
   ...(inMean === undefined ? {} : { inMean }),
 })
 
+/**
+ * A speed is taken over the second half of the runs, a law of growth at their end. Where the first half shows something
+ * else, the limit is not reached yet, and a difference from it is no contradiction.
+ */
 function observedAgainst(
   prediction: Prediction,
   elements: readonly string[],
   start: Float64Array,
-  finalStates: Float64Array,
+  half: Float64Array,
+  end: Float64Array,
   time: number,
   { confidence, tolerance }: RunRequest,
 ): PredictionPart {
@@ -77,28 +89,28 @@ function observedAgainst(
   const at = elements.indexOf(name)
   if (at < 0) return unobserved(prediction)
   const width = elements.length
-  const replications = finalStates.length / width
-  const scale = kind === 'speed' ? time : Math.sqrt(time)
-  const values = Float64Array.from({ length: replications }, (_, r) => {
-    const gained = finalStates[r * width + at] - start[at]
-    return gained / scale
-  })
-  const { estimate, standardError } = meanOf(values)
+  const replications = end.length / width
+  const early = new Float64Array(replications)
+  const late = new Float64Array(replications)
+  for (let r = 0; r < replications; r++) {
+    const first = half[r * width + at] - start[at]
+    const all = end[r * width + at] - start[at]
+    early[r] = kind === 'speed' ? first / (time / 2) : first / Math.sqrt(time / 2)
+    late[r] = kind === 'speed' ? (all - first) / (time / 2) : all / Math.sqrt(time)
+  }
+  const { estimate, standardError } = meanOf(late)
   const halfWidth = halfWidthOf(standardError, replications - 1, confidence)
-  const allowed =
-    Math.max(tolerance.kind === 'relative' ? tolerance.value : 0, leastTolerance) * Math.abs(prediction.value)
+  const relative = Math.max(tolerance.kind === 'relative' ? tolerance.value : 0, leastTolerance)
+  const allowed = relative * Math.abs(prediction.value)
   const difference = Math.abs(estimate - prediction.value)
-  const verdict =
-    difference + halfWidth <= allowed
-      ? 'agrees'
-      : difference > halfWidth && difference > allowed
-        ? 'disagrees'
-        : 'undecided'
+  const change = meanOf(late.map((each, r) => each - early[r]))
+  const moving = Math.abs(change.estimate) > halfWidthOf(change.standardError, replications - 1, confidence)
+  const off = difference > halfWidth && difference > allowed && !moving
   return {
     predicted: prediction.value,
     observed: estimate,
     halfWidth,
-    verdict,
+    verdict: difference + halfWidth <= allowed ? 'agrees' : off ? 'disagrees' : 'undecided',
     ...(prediction.inMean === undefined ? {} : { inMean: prediction.inMean }),
   }
 }

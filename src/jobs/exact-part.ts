@@ -9,10 +9,10 @@ export const mostListedStates = 100_000
 /** The exact answer as the document shows it, or null with the reason beside it. */
 export function exactPart(
   exact: ExactAnswer | undefined,
-  reason: () => string,
+  absent: string,
   states?: Chain,
 ): Pick<StillmarkDocument, 'exact' | 'exactAbsent'> {
-  if (exact === undefined) return { exact: null, exactAbsent: reason() }
+  if (exact === undefined) return { exact: null, exactAbsent: absent }
   const part: ExactPart = { method: exact.method, measures: exact.measures }
   if (states === undefined || exact.shares === undefined) return { exact: part }
   const { shares } = exact

@@ -51,6 +51,10 @@ export function predictionsOf(
     from[chain.start] = 1
     atWarmUp = transientDistribution(chain, from, run.warmUp)
   }
+  // One slow part makes the whole run few looks at it: no measure can be called off for it.
+  const slow = Object.values(averages).some(
+    ({ correlationTime }) => correlationTime * fewestCorrelationTimes > run.runLength,
+  )
   return Object.fromEntries(
     Object.entries(averages).map(([name, { varianceConstant, biasFrom, correlationTime }]) => {
       let bias: number | undefined
@@ -60,7 +64,6 @@ export function predictionsOf(
         bias /= run.runLength
       }
       const halfWidth = z * Math.sqrt(varianceConstant / (run.replications * run.runLength))
-      const slow = correlationTime * fewestCorrelationTimes > run.runLength
       return [name, { halfWidth, correlationTime, slow, ...(bias === undefined ? {} : { bias }) }]
     }),
   )

@@ -97,7 +97,7 @@ async function warmUpByCuts(
         unsettled: worst.settled ? 'the best cut lies late in the longest pilot' : worst.why,
       }
     }
-    if (exact === undefined) longest = budget / Math.max(pilot.events / steps, 1e-300)
+    if (finite === undefined) longest = budget / Math.max(pilot.events / steps, 1e-300)
     length = Math.min(4 * length, longest)
     if (length <= steps) {
       return { pilot, warmUp: steps, basis: 'the whole pilot is deleted', unsettled: worst.why }

@@ -3,9 +3,6 @@ import type { StructurePart } from './document.js'
 
 /** Why there is no exact answer, in a sentence. */
 export function explain({ recurrence, grade, basis }: StructurePart): string {
-  if (recurrence === 'positive recurrent') {
-    return `The model has a steady state (${grade}: ${basis}), but this version solves finite models only.`
-  }
   return recurrence === 'undetermined'
     ? `It is open whether the model has a long-run answer: ${basis}.`
     : `The model is ${recurrence} (${grade}): ${basis}.`

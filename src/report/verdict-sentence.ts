@@ -48,6 +48,8 @@ function comparisonSentence({ comparison, structure, exact }: StillmarkDocument)
   const unsure = Object.entries(comparison.measures).filter(([, each]) => each.verdict === 'undecided')
   if (comparison.verdict === 'no steady state')
     return `There is no steady state: the model is ${structure?.recurrence}.`
+  if (structure?.recurrence === 'null recurrent' || structure?.recurrence === 'transient')
+    return `There is no steady state: the model is ${structure.recurrence}, but the simulation does not grow as it must.`
   if (structure?.recurrence === 'undetermined')
     return 'It is open whether this model has a long-run answer, so nothing can be compared.'
   if (exact === null) return 'There is no exact answer to compare the simulation with.'
