@@ -41,32 +41,40 @@ export function solveUnbounded(
     return answer(
       model,
       texts,
+      options,
       `detailed balance of a birth-death process, ${summed} counts added up`,
       (measure, text) => countsMeasure(model, counts, measure, text),
     )
   }
   if (structure.form === 'network') {
     const counts = networkCounts(structure, model.start, growth)
-    return answer(model, texts, `product form, ${structure.stations.length} stations`, (measure, text) =>
+    return answer(model, texts, options, `product form, ${structure.stations.length} stations`, (measure, text) =>
       countsMeasure(model, counts, measure, text),
     )
   }
   if (structure.form !== 'levels') return undefined
-  const kept = truncateLevels(model, structure, growth, options)
+  const kept = truncateLevels(model, structure, growth)
   const solved = `${kept.solved.method}, ${kept.chain.size.toLocaleString('en-US')} states`
   const cut = `levels from ${kept.levels.toLocaleString('en-US')} on cut off, whose share is below ${kept.cutOff.toExponential(0)}`
-  return answer(model, texts, `${solved}; ${cut}`, (measure, text) => levelsMeasure(model, kept, measure, text))
+  return answer(model, texts, options, `${solved}; ${cut}`, (measure, text) =>
+    levelsMeasure(model, kept, measure, text),
+  )
 }
 
 function answer(
   model: VariablesModel,
   texts: readonly MeasureText[],
+  options: SolveOptions,
   method: string,
   solve: (measure: CompiledMeasure, text: MeasureText) => ExactMeasure,
 ): ExactAnswer {
   const measures: Record<string, ExactMeasure> = Object.create(null)
   const left: StillmarkError[] = []
   model.measures.forEach((measure, k) => {
+    if (options.signal?.aborted) {
+      throw new StillmarkError({ code: 'interrupted', what: 'The solution was stopped.' }, 'interrupted')
+    }
+    options.onProgress?.(k / model.measures.length)
     try {
       const solved = solve(measure, texts[k])
       if (Number.isFinite(solved.errorBound)) measures[measure.name] = solved
