@@ -3,12 +3,13 @@ import { tmpdir } from 'node:os'
 import { join } from 'node:path'
 import { describe, expect, test } from 'vitest'
 import { adjustedConfidence, compareRun } from '../../src/comparison/compare-run.js'
-import { check, exactAnswer } from '../../src/jobs/check.js'
+import { check } from '../../src/jobs/check.js'
 import { chooseRun } from '../../src/jobs/choose-run.js'
 import { classify } from '../../src/jobs/classify.js'
 import { withDeadline } from '../../src/jobs/deadline.js'
 import type { StillmarkDocument } from '../../src/jobs/document.js'
 import { adjustedEstimates } from '../../src/jobs/estimates.js'
+import { exactAnswer } from '../../src/jobs/exact-answer.js'
 import { layGround } from '../../src/jobs/ground.js'
 import { runRequest } from '../../src/jobs/run-request.js'
 import { runSimulation } from '../../src/jobs/run-simulation.js'
@@ -35,7 +36,7 @@ async function compareAcross(file: string, simulated: ReadonlyMap<string, string
   const { observations, estimates } = await runSimulation(wrong, run, request, report)
   const confidence = adjustedConfidence(request.confidence, model.model.measures.length)
   return compareRun({
-    exact: exactAnswer(model, options, report),
+    exact: exactAnswer(model, options, report).exact,
     adjusted: adjustedEstimates(model.model, observations, estimates, confidence),
     tolerance: { kind: 'relative', value: 0.01 },
     claims: [],
