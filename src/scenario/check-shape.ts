@@ -2,7 +2,7 @@ import type { z } from 'zod'
 import type { Spot } from './expression.js'
 import type { FaultList } from './fault-list.js'
 import { scenarioSchema } from './format-schema.js'
-import type { Located, LocatedMap } from './located-yaml.js'
+import { type Located, type LocatedMap, placeOf } from './located-yaml.js'
 import { nearest, suggestion } from './names.js'
 
 /** Keys of the format that this version can't do yet, and what can be done in their place. */
@@ -34,7 +34,11 @@ export function checkShape(root: Located, faults: FaultList): void {
 
 /** As zod wants it: objects without a prototype, so that no key of a stranger means more than itself. */
 function plain(node: Located, depth: number): unknown {
-  if (node.kind === 'scalar') return typeof node.value === 'bigint' ? Number(node.value) : node.value
+  if (node.kind === 'scalar') {
+    const value = typeof node.value === 'bigint' ? Number(node.value) : node.value
+    // What a double can't hold goes on as text, so that the message is about the number.
+    return typeof value === 'number' && !Number.isFinite(value) ? node.text : value
+  }
   if (node.kind === 'list') return node.items.map((item) => plain(item, depth + 1))
   const object: Record<string, unknown> = Object.create(null)
   for (const { key, value } of node.entries) {
@@ -99,7 +103,8 @@ function report(issue: Issue, root: LocatedMap, faults: FaultList): void {
 }
 
 function reportUnknown(unknown: string, node: Located, path: readonly string[], faults: FaultList): void {
-  const entry = node.kind === 'map' ? node.entries.find((each) => each.key === unknown) : undefined
+  const place = node.kind === 'map' ? placeOf(node, unknown) : undefined
+  const entry = node.kind === 'map' && place !== undefined ? node.entries[place] : undefined
   const spot = entry?.keySpot ?? node.spot
   const key = [...path, unknown].join('.')
   if (Object.hasOwn(notYet, unknown) && path.length === 2) {
@@ -109,8 +114,7 @@ function reportUnknown(unknown: string, node: Located, path: readonly string[], 
   // `source: capacity spreadsheet, cell F12` inside one-line braces: the comma has ended the text.
   const value = entry?.value
   const cutOff = value?.kind === 'scalar' && value.value === null && value.inFlow
-  const before =
-    node.kind === 'map' ? node.entries[node.entries.findIndex((each) => each.key === unknown) - 1] : undefined
+  const before = node.kind === 'map' && place !== undefined ? node.entries[place - 1] : undefined
   if (cutOff && before?.value.kind === 'scalar' && /[ (]/.test(unknown + before.value.text)) {
     faults.add(
       'comma-in-braces',
@@ -176,8 +180,9 @@ function follow(root: LocatedMap, path: readonly string[]): Followed {
       node = item
       continue
     }
+    const place: number | undefined = node.kind === 'map' ? placeOf(node, part) : undefined
     const entry: LocatedMap['entries'][number] | undefined =
-      node.kind === 'map' ? node.entries.find((each) => each.key === part) : undefined
+      node.kind === 'map' && place !== undefined ? node.entries[place] : undefined
     if (entry === undefined) return { node, keySpot, found: false }
     keySpot = entry.keySpot
     node = entry.value

@@ -1,6 +1,6 @@
 import {
   absolute, add, compare, divide, type Fraction, floor, fraction, isInteger, multiply, negate, one, power, sign, subtract,
-  zero,
+  toNumber, zero,
 } from '../numbers/fraction.js' // biome-ignore format: one list
 import type { Expression } from './expression.js'
 
@@ -13,6 +13,8 @@ export interface ExactEnvironment {
   readonly bound: ReadonlyMap<string, Fraction>
   /** Values of quantities in this state, filled as they are met: each is worked out once, however often it is named. */
   readonly known?: Map<string, Fraction | undefined>
+  /** Work that is left for this value, in steps of about a tenth of a microsecond; counted down. */
+  readonly work?: { left: number }
 }
 
 /** An expression that has no value: thrown by `evaluateExactly`, turned into a fault with its place by the caller. */
@@ -28,23 +30,36 @@ export class NoValue extends Error {
 const largestExponent = 4096
 /** Numerators and denominators beyond this many bits are given up, as not exactly known. */
 const mostBits = 40_000
+const longest = 1n << BigInt(mostBits)
+/** Work that one value may cost, under a second: folds within folds and fractions that grow would not end else. */
+const mostWork = 1_000_000
 
 /**
  * The exact value of an expression, conditions as 1 and 0.
  *
- * @returns undefined where the value is irrational or too long to be followed in fractions
+ * @returns undefined where the value is irrational, or too long or too much work to be followed in fractions
  * @throws NoValue: division by 0, an index outside its list, a logarithm of nothing and the like
  */
 export function evaluateExactly(expression: Expression, given: ExactEnvironment): Fraction | undefined {
-  const environment = given.known === undefined ? { ...given, known: new Map<string, Fraction | undefined>() } : given
+  const { known = new Map<string, Fraction | undefined>(), work = { left: mostWork } } = given
+  const environment = given.known === known && given.work === work ? given : { ...given, known, work }
+  if (work.left < 0) return undefined
   const value = evaluate(expression, environment)
-  return value === undefined || isLong(value) ? undefined : value
+  if (value === undefined || isLong(value)) return undefined
+  work.left -= workOf(value)
+  return value
 }
 
-const isLong = (value: Fraction): boolean => {
-  const limit = 1n << BigInt(mostBits)
-  return value.denominator > limit || value.numerator > limit || -value.numerator > limit
+/** A common divisor costs the square of the length. */
+const workOf = (value: Fraction): number => {
+  if (value.denominator < machineWord && value.numerator < machineWord && -value.numerator < machineWord) return 1
+  const digits = Math.max(value.denominator.toString(16).length, value.numerator.toString(16).length)
+  return 10 + (digits * digits) / 200
 }
+const machineWord = 1n << 64n
+
+const isLong = (value: Fraction): boolean =>
+  value.denominator > longest || value.numerator > longest || -value.numerator > longest
 
 const truth = (value: boolean): Fraction => (value ? one : zero)
 
@@ -130,7 +145,7 @@ function evaluate(expression: Expression, environment: ExactEnvironment): Fracti
       return condition && of(sign(condition) !== 0 ? expression.yes : expression.no)
     }
     case 'call':
-      return called(expression.name, expression.args.map(of))
+      return called(expression.name, expression.args.map(of), environment.work)
     case 'fold': {
       const from = wholeIndex(of(expression.from), expression.bound)
       const to = wholeIndex(of(expression.to), expression.bound)
@@ -152,6 +167,8 @@ function evaluate(expression: Expression, environment: ExactEnvironment): Fracti
         else if (expression.fold === 'sum') result = add(result, term)
         else if (expression.fold === 'max_of') result = compare(term, result) > 0 ? term : result
         else result = compare(term, result) < 0 ? term : result
+        if (isLong(result)) return undefined
+        if (environment.work !== undefined) environment.work.left -= workOf(result)
       }
       return result
     }
@@ -198,7 +215,11 @@ function raised(a: Fraction, b: Fraction): Fraction | undefined {
   return bits * Math.abs(exponent) > mostBits ? undefined : power(a, exponent)
 }
 
-function called(name: string, args: readonly (Fraction | undefined)[]): Fraction | undefined {
+function called(
+  name: string,
+  args: readonly (Fraction | undefined)[],
+  work: ExactEnvironment['work'],
+): Fraction | undefined {
   if (args.some((value) => value === undefined)) return undefined
   const values = args as readonly Fraction[]
   const [a] = values
@@ -223,6 +244,9 @@ function called(name: string, args: readonly (Fraction | undefined)[]): Fraction
       return squareRoot(a)
     case 'binomial':
     case 'binomial_tail':
+      // A tail adds up to as many long terms as there are trials.
+      if (work !== undefined && name === 'binomial_tail')
+        work.left -= Math.min(toNumber(values[1]), mostTerms) ** 2 / 1.5
       return binomial(name === 'binomial_tail', values)
     case 'geometric':
     case 'geometric_tail':

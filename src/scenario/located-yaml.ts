@@ -36,6 +36,18 @@ export interface LocatedScalar {
   readonly spotAt: (offset: number) => Spot
 }
 
+const places = new WeakMap<LocatedMap, ReadonlyMap<string, number>>()
+
+/** Place of a key among a map's entries, or undefined; worked out once a map, since a file may hold very many. */
+export function placeOf(map: LocatedMap, key: string): number | undefined {
+  let known = places.get(map)
+  if (known === undefined) {
+    known = new Map(map.entries.map((entry, i) => [entry.key, i]))
+    places.set(map, known)
+  }
+  return known.get(key)
+}
+
 /** Nesting that a scenario never needs; beyond it a file is not one. */
 const deepest = 60
 
@@ -54,17 +66,15 @@ export function readLocated(
   }
   let document: ReturnType<typeof parseDocument>
   try {
-    document = parseDocument(text, { lineCounter: lines, version: '1.2', uniqueKeys: true, prettyErrors: false })
+    document = parseDocument(text, { lineCounter: lines, version: '1.2', uniqueKeys: false, prettyErrors: false })
   } catch (error) {
     if (!(error instanceof RangeError)) throw error
     return { faults: [{ code: 'nested-too-deeply', what: 'The file nests too deeply to be read.' }] }
   }
   if (document.errors.length > 0) {
     // One wrong bracket makes the parser stumble over all that follows: only its first fault is one of the writer's.
-    const twice = document.errors.filter(isTwice)
-    const first = document.errors.find((error) => !isTwice(error))
-    const told = first === undefined ? twice : [...twice.filter(({ pos }) => pos[0] < first.pos[0]), first]
-    return { faults: told.slice(0, 20).map((error) => yamlFault(text, error.pos[0], error.message, spotOf)) }
+    const [first] = document.errors
+    return { faults: [yamlFault(text, first.pos[0], first.message, spotOf)] }
   }
 
   const faults: Fault[] = []
@@ -121,6 +131,7 @@ export function readLocated(
     if (!isMap(node)) return nothing(start, inFlow)
     const flow = inFlow || node.flow === true
     const entries: LocatedEntry[] = []
+    const seen = new Set<string>()
     for (const pair of node.items) {
       if (!isPair(pair)) continue
       const key = pair.key as Node | null
@@ -135,6 +146,9 @@ export function readLocated(
         continue
       }
       const name = typeof key.value === 'string' ? key.value : (key.source ?? String(key.value))
+      // Looked up here: the parser's own check compares every key with every other.
+      if (seen.has(name)) faults.push(keyTwice(text, spotOf(at)))
+      seen.add(name)
       entries.push({
         key: name,
         keySpot: spotOf(at),
@@ -177,20 +191,40 @@ function nestingFault(text: string): Fault | undefined {
   return undefined
 }
 
-const isTwice = ({ message }: { readonly message: string }): boolean => /unique/i.test(message)
+const lineAt = (text: string, line: number): string => text.split('\n', line)[line - 1] ?? ''
+
+const keyTwice = (text: string, where: Spot): Fault => ({
+  code: 'key-twice',
+  where,
+  text: lineAt(text, where.line).trim().slice(0, 80),
+  what: 'This key stands here a second time.',
+  next: 'Keep one of them.',
+})
 
 function yamlFault(text: string, offset: number, message: string, spotOf: (offset: number) => Spot): Fault {
   const where = spotOf(offset)
-  const line = text.split('\n', where.line)[where.line - 1] ?? ''
+  const line = lineAt(text, where.line)
+  const shown = line.trim().slice(0, 80)
+  if (/call stack/i.test(message)) {
+    return { code: 'nested-too-deeply', where, text: shown, what: 'The file nests too deeply to be a scenario.' }
+  }
+  if (/multiple documents/i.test(message)) {
+    return {
+      code: 'not-yaml',
+      where,
+      text: shown,
+      what: 'A second document begins here.',
+      next: 'A file holds one scenario: take the line "---" out, or make it two files.',
+    }
+  }
   const plain = message.split('\n')[0].replace(/\.$/, '')
-  const twice = isTwice({ message })
   return {
-    code: twice ? 'key-twice' : 'not-yaml',
+    code: 'not-yaml',
     where,
-    text: line.trim().slice(0, 80),
-    what: twice ? 'This key stands here a second time.' : `This is not valid YAML: ${lowerFirst(plain)}.`,
-    next: twice
-      ? 'Keep one of them.'
+    text: shown,
+    what: `This is not valid YAML: ${lowerFirst(plain)}.`,
+    next: /tabs/i.test(message)
+      ? 'Indent with spaces.'
       : /[{[]/.test(line)
         ? 'In the one-line { } style text with commas or brackets needs quotes: { then: { "waiting[1]": "waiting[1] - 1" } }; on indented lines it does not.'
         : 'Check the indentation, the colons and the quotes of this line and the one before.',

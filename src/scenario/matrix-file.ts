@@ -184,8 +184,8 @@ function commaSeparated(text: string): Matrix {
         `This line has ${row.length} numbers, the file has ${size} lines.`,
         'A chain needs as many columns as lines, and no header.',
       )
+    let column = 1
     row.forEach((word, to) => {
-      const column = row.slice(0, to).reduce((sum, each) => sum + each.length + 1, 1)
       const written = writtenNumber(word)
       if (written === undefined)
         throw new MatrixFault(
@@ -196,6 +196,7 @@ function commaSeparated(text: string): Matrix {
         )
       if (written.value.numerator !== 0n)
         entries.push({ from, to, value: written.value, at: { line: from + 1, column } })
+      column += word.length + 1
     })
   })
   return { size, entries }

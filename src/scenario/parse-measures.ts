@@ -199,12 +199,24 @@ function parseSubject(
 
 const tableForms = 'Write [failed] for a share, { keen: 0, worn: 3 } for values, { from: worn, to: failed } for moves.'
 
+const indices = new WeakMap<readonly string[], ReadonlyMap<string, number>>()
+
+/** Index of a state by its name; worked out once a table, since it may have very many. */
+function indexOfState(states: readonly string[], name: string): number | undefined {
+  let known = indices.get(states)
+  if (known === undefined) {
+    known = new Map(states.map((each, i) => [each, i]))
+    indices.set(states, known)
+  }
+  return known.get(name)
+}
+
 /** `[failed]`, `{ keen: 0, worn: 3 }` or `{ from: worn, to: failed }`. */
 function tableSubject(reading: Reading, node: Located, key: string, states: readonly string[]): Subject | undefined {
   const { faults } = reading
   const indexOf = (name: string, spot: Spot): number | undefined => {
-    const index = states.indexOf(name.trim())
-    if (index >= 0) return index
+    const index = indexOfState(states, name.trim())
+    if (index !== undefined) return index
     faults.add('unknown-state', spot, key, `"${name.slice(0, 60)}" is not a state.`, suggestion(name, states), name)
     return undefined
   }

@@ -28,6 +28,8 @@ export interface ParseOptions {
 
 /** Faults of one file that are reported; beyond it the file is something else. */
 const mostFaults = 100
+/** Faults of files that are right, but too large to be worked on. */
+const limits: ReadonlySet<string> = new Set(['too-many-copies', 'state-too-wide'])
 
 /**
  * Reads and checks a scenario file's text. No file is touched but through `readBeside`.
@@ -119,7 +121,8 @@ const refuseFiles: ReadBeside = () => {
 function failed(faults: FaultList): StillmarkError {
   const all = faults.sorted()
   const shown = all.slice(0, mostFaults)
-  return new StillmarkError(shown.length > 0 ? shown : [{ code: 'not-a-scenario', what: 'This is not a scenario.' }])
+  if (shown.length === 0) return new StillmarkError({ code: 'not-a-scenario', what: 'This is not a scenario.' })
+  return new StillmarkError(shown, shown.every(({ code }) => limits.has(code)) ? 'limit' : 'input')
 }
 
 /** Arrays keep their range although their bounds may be faulty, so that no index is told off for it. */
@@ -128,8 +131,9 @@ function namedVariables(
   variables: readonly StateVariable[],
 ): Map<string, { readonly index?: { readonly from: number; readonly to: number } }> {
   const named = new Map<string, { readonly index?: { readonly from: number; readonly to: number } }>()
+  const byName = new Map(variables.map((each) => [each.name, each]))
   for (const { key, value } of entriesOf(root, 'state')) {
-    const known = variables.find((each) => each.name === key)
+    const known = byName.get(key)
     const array = value.kind === 'map' && entryOf(value, 'index') !== undefined
     const anyIndex = { from: -(2 ** 31), to: 2 ** 31 }
     named.set(key, known ?? (array ? { index: anyIndex } : {}))
@@ -151,7 +155,7 @@ function parseConstants(
       if (item.kind !== 'scalar') return undefined
       const written = writtenNumber(item.text)
       if (written === undefined) {
-        const formula = /[A-Za-z]/.test(item.text)
+        const formula = /[A-Za-z]/.test(item.text) && !/^[+-]?\.?(?:\d[\w.]*(?:e[+-]?\d+)?|inf|nan)$/i.test(item.text)
         faults.add(
           'not-a-number',
           item.spot,
@@ -228,32 +232,61 @@ function parseQuantities(reading: Reading, root: LocatedMap): Map<string, Expres
     const expression = expressionAt(reading, value, `quantities.${key}`, overState)
     if (expression !== undefined) quantities.set(key, expression)
   }
+  const uses = new Map([...quantities].map(([name, expression]) => [name, quantitiesIn(expression)]))
+  const suspects = neverEnding(uses)
   for (const { key, value } of entriesOf(root, 'quantities')) {
-    const circle = circleFrom(key, quantities)
+    const circle = suspects.has(key) && reading.faults.count < mostFaults ? circleFrom(key, uses) : undefined
     if (circle === undefined) continue
     reading.faults.add(
       'circle',
       value.spot,
       `quantities.${key}`,
-      `"${key}" is defined by itself: ${circle.join(' → ')}.`,
+      `"${key}" is defined by itself: ${shownCircle(circle)}.`,
       'Take one of them out of the circle.',
     )
   }
   return quantities
 }
 
+const shownCircle = (circle: readonly string[]): string =>
+  (circle.length > 9 ? [...circle.slice(0, 6), '…', ...circle.slice(-2)] : circle).join(' → ')
+
+/** Quantities that can't be worked out one after the other: those in a circle, and those that use one. */
+function neverEnding(uses: ReadonlyMap<string, ReadonlySet<string>>): ReadonlySet<string> {
+  const usedBy = new Map<string, string[]>([...uses.keys()].map((name) => [name, []]))
+  const open = new Map<string, number>()
+  for (const [name, used] of uses) {
+    const known = [...used].filter((each) => uses.has(each))
+    open.set(name, known.length)
+    for (const each of known) usedBy.get(each)?.push(name)
+  }
+  const ready = [...open].filter(([, count]) => count === 0).map(([name]) => name)
+  const left = new Set(uses.keys())
+  for (let name = ready.pop(); name !== undefined; name = ready.pop()) {
+    left.delete(name)
+    for (const user of usedBy.get(name) ?? []) {
+      const count = (open.get(user) ?? 0) - 1
+      open.set(user, count)
+      if (count === 0) ready.push(user)
+    }
+  }
+  return left
+}
+
 /** The way by which a quantity leads back to itself, or undefined. Each quantity is visited once. */
-function circleFrom(start: string, quantities: ReadonlyMap<string, Expression>): readonly string[] | undefined {
-  const seen = new Set<string>()
-  const paths: string[][] = [[start]]
-  for (let path = paths.pop(); path !== undefined; path = paths.pop()) {
-    const expression = quantities.get(path[path.length - 1])
-    if (expression === undefined) continue
-    for (const next of quantitiesIn(expression)) {
-      if (next === start) return [...path, start]
-      if (seen.has(next)) continue
-      seen.add(next)
-      paths.push([...path, next])
+function circleFrom(start: string, uses: ReadonlyMap<string, ReadonlySet<string>>): readonly string[] | undefined {
+  const cameFrom = new Map<string, string>()
+  const rest = [start]
+  for (let name = rest.pop(); name !== undefined; name = rest.pop()) {
+    for (const next of uses.get(name) ?? []) {
+      if (next === start) {
+        const back = [start]
+        for (let at: string | undefined = name; at !== undefined; at = cameFrom.get(at)) back.push(at)
+        return back.reverse()
+      }
+      if (cameFrom.has(next)) continue
+      cameFrom.set(next, name)
+      rest.push(next)
     }
   }
   return undefined

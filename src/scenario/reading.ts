@@ -3,7 +3,7 @@ import { evaluateExactly, NoValue } from './evaluate-exactly.js'
 import type { Expression, Spot } from './expression.js'
 import { readSyntax } from './expression-syntax.js'
 import type { FaultList } from './fault-list.js'
-import type { Located, LocatedEntry, LocatedMap, LocatedScalar } from './located-yaml.js'
+import { type Located, type LocatedEntry, type LocatedMap, type LocatedScalar, placeOf } from './located-yaml.js'
 import { type Allowed, resolveNames, type Scope } from './resolve-names.js'
 import { writtenNumber } from './written-number.js'
 
@@ -17,8 +17,10 @@ const noBound: ReadonlySet<string> = new Set()
 export const constantsOnly: Allowed = { state: false, transitions: false, bound: noBound }
 export const overState: Allowed = { state: true, transitions: false, bound: noBound }
 
-export const entryOf = (map: LocatedMap, key: string): LocatedEntry | undefined =>
-  map.entries.find((each) => each.key === key)
+export function entryOf(map: LocatedMap, key: string): LocatedEntry | undefined {
+  const place = placeOf(map, key)
+  return place === undefined ? undefined : map.entries[place]
+}
 
 /** The entries of a map under a key; none where it is absent, empty or no map (which the shape's check reports). */
 export function entriesOf(map: LocatedMap, key: string): readonly LocatedEntry[] {
@@ -100,7 +102,7 @@ export function constantValue(
         spot,
         key,
         'This value is not a whole number or a fraction.',
-        'exp, log, sqrt and poisson have no exact value here: write the number.',
+        'exp, log, sqrt, poisson and very long sums have no exact value here: write the number.',
       )
     }
     return value

@@ -304,6 +304,10 @@ describe('tables and matrices', () => {
     expect(faultsOf('stillmark: 1\ntitle: t\ntime: discrete\nmatrix: m.mtx\n')).toEqual(['4:9 no-matrix']))
 })
 
+/** A model whose upper bound is the expression. */
+const boundedBy = (bound: string) =>
+  `stillmark: 1\ntitle: t\ntime: continuous\nstate: { n: { from: 0, to: "${bound}" } }\ntransitions: { t: { rate: 1, then: {} } }\n`
+
 describe('a stranger’s file', () => {
   const scenarios = ['parcel-lockers', 'reorder-stock', 'wear-and-inspection', 'three-station-line', 'shift-rota'].map(
     (name) => readFileSync(`scenarios/${name}.yaml`, 'utf8'),
@@ -414,10 +418,58 @@ describe('a stranger’s file', () => {
       'prototype keys everywhere',
       'stillmark: 1\ntitle: t\ntime: continuous\nconstants: { __proto__: 1 }\nstate: { __proto__: { from: 0 } }\n__proto__: { a: 1 }\ntransitions: { t: { __proto__: 1, rate: 1, then: { __proto__: 1 } } }\n',
     ],
+    ['blocks of lists', Array.from({ length: 5000 }, (_, i) => `${' '.repeat(i)}-`).join('\n')],
+    ['folds within folds', boundedBy('sum(i, 1, 100000, sum(j, 1, 100000, 1))')],
+    ['fractions that grow term by term', boundedBy('floor(sum(i, 1, 100000, 1 / i))')],
+    ['long powers added up', boundedBy('sum(i, 1, 100000, (1 / i)^1000)')],
+    ['tails added up', boundedBy('sum(i, 1, 100000, binomial_tail(1, 400, 1/7))')],
+    ['ten thousand unknown keys', Array.from({ length: 10_000 }, (_, i) => `z${i}: 1`).join('\n')],
+    [
+      'two thousand quantities in a circle',
+      `stillmark: 1\ntitle: t\ntime: continuous\nquantities:\n${Array.from({ length: 2000 }, (_, i) => `  q${i}: q${(i + 1) % 2000}`).join('\n')}\n`,
+    ],
     ['numbers without end', `stillmark: 1\ntitle: t\ntime: continuous\nconstants: { a: ${'9'.repeat(100_000)} }\n`],
   ])('%s end in a message within 2 s', (_, text) => {
     holds(text)
     expect(faultsOf(text).length).toBeGreaterThan(0)
+  })
+
+  test.each([
+    ['1e999', 'Write 12, 0.5, 1e-3, 1/3 or 2.5 %, with exponents from -400 to 400.'],
+    ['0x10', 'Write 12, 0.5, 1e-3, 1/3 or 2.5 %, with exponents from -400 to 400.'],
+    ['2 * x', 'A constant is a number; a formula belongs under "quantities".'],
+  ])('%s is no constant, and what to write is said', (written, next) => {
+    const text = variables('  t: { rate: a, then: {} }').replace('a: 2', `a: ${written}`)
+    expect(() => parseScenario(text, { file: 'f' })).toThrow(`"${written}" is not a number. ${next}`)
+  })
+
+  test('a model that is only too large ends with a limit, a wrong one as wrong input', () => {
+    const giant = '  t: { each: { d: { from: 0, to: 10000000 } }, rate: 1, then: {} }'
+    const kindOf = (text: string) => {
+      try {
+        parseScenario(text, { file: 'f' })
+      } catch (error) {
+        return (error as StillmarkError).kind
+      }
+    }
+    expect(kindOf(variables(giant))).toBe('limit')
+    expect(kindOf(variables(giant.replace('rate: 1', 'rate: x')))).toBe('input')
+  })
+
+  test('a second document is told as such', () =>
+    expect(faultsOf(`${lockers}\n---\na: 1\n`)).toEqual([`${lockers.split('\n').length + 1}:1 not-yaml`]))
+
+  test('a table of 400 by 400 in CSV is read in under 2 s, each fault at its column', () => {
+    const rows: string[][] = Array.from({ length: 400 }, (_, i) =>
+      Array.from({ length: 400 }, (_, j) => (i === j ? '-399' : '1')),
+    )
+    const csv = () => rows.map((row) => row.join(',')).join('\n')
+    const text = 'stillmark: 1\ntitle: t\ntime: continuous\nmatrix: q.csv\n'
+    const begin = performance.now()
+    expect((parseScenario(text, { file: 'f', readBeside: csv }).body as TableBody).entries).toHaveLength(400 * 399)
+    expect(performance.now() - begin).toBeLessThan(2000)
+    rows[1][3] = 'x'
+    expect(() => parseScenario(text, { file: 'f', readBeside: csv })).toThrow('q.csv:2:10: "x" is not a number.')
   })
 
   test('quantities that double a hundred times cost no time', () => {
