@@ -113,7 +113,8 @@ export function defect(
 /** Colour only on a terminal, and not where the user asked for none (NO_COLOR, TERM=dumb). */
 function paintFor(stream: NodeJS.WriteStream, { NO_COLOR, TERM }: Surroundings['environment']): Paint {
   const on = stream.isTTY && !NO_COLOR && TERM !== 'dumb'
-  const { bold, dim, green, red, yellow } = createColors(on)
+  // Off a terminal isTTY is undefined, which the library takes as "decide yourself", and then colours under CI.
+  const { bold, dim, green, red, yellow } = createColors(on === true)
   return { strong: bold, quiet: dim, good: green, bad: red, open: yellow }
 }
 
